@@ -1,0 +1,47 @@
+"""What can go wrong, as a tree.
+
+::
+
+    GinnelError
+    +-- ConfigError          a setting is missing, unknown or out of range
+    +-- CaptureError         samples cannot be had
+    |   +-- CaptureFormatError   a file is not what it claims to be
+    |   +-- CaptureTimeError     nobody knows when it starts, or it overlaps another
+    +-- StoreError           the log cannot be read or written
+        +-- StoreBusyError       locked or unreachable: try again
+        +-- SchemaMismatchError  made by another version: `ginnel store upgrade`
+
+Each message is one line that says what, where and how to mend it.
+"""
+
+
+class GinnelError(Exception):
+    """Anything that Ginnel reports in one clear line."""
+
+
+class ConfigError(GinnelError):
+    """A setting is missing, unknown or out of range."""
+
+
+class CaptureError(GinnelError):
+    """Samples cannot be had."""
+
+
+class CaptureFormatError(CaptureError):
+    """A file is not what it claims to be."""
+
+
+class CaptureTimeError(CaptureError):
+    """Nobody knows when a capture starts, or it overlaps another."""
+
+
+class StoreError(GinnelError):
+    """The log cannot be read or written."""
+
+
+class StoreBusyError(StoreError):
+    """The store is locked or unreachable; trying again may help."""
+
+
+class SchemaMismatchError(StoreError):
+    """The store was made by another version; `ginnel store upgrade` mends it."""
