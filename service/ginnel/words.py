@@ -77,6 +77,14 @@ class Flag(StrEnum):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Site:
+    """The place that is watched; its time zone says where hours and days begin."""
+
+    name: str
+    timezone: str = "UTC"  # an IANA name
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Mounting:
     """How a sensor looks at the path.
 
