@@ -1,0 +1,329 @@
+"""Writing the log: spans with their passages, one transaction each."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+from typing import Any
+
+from sqlalchemy import Connection, Row, delete, insert, select, update
+from sqlalchemy.dialects import postgresql, sqlite
+
+from ginnel.errors import StoreError
+from ginnel.store.codes import PassageCodes, encode
+from ginnel.store.engine import Store
+from ginnel.store.tables import MountingRow, PassageRow, ReadingRow, SensorRow, SiteRow, SpanRow
+from ginnel.times import utc_text
+from ginnel.words import US_PER_S, Mounting, Passage, Sensor, Site, Span
+
+#: A crossing may lie this far outside the time in which its mover was heard, and no further.
+CROSSING_MARGIN_US = 600 * US_PER_S
+#: Times of hearing that stick out of their span by less than this are rounding, and are cut to it.
+ROUNDING_US = US_PER_S
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SpanChange:
+    """What recording a span did to the passages of the log."""
+
+    added: int = 0
+    removed: int = 0
+    kept: int = 0
+    already_stored: bool = False  # nothing was changed: all of it was there
+
+    def __str__(self) -> str:
+        """Say it in a few words."""
+        if self.already_stored:
+            return f"already stored ({self.kept} kept)"
+        return f"{self.added} added, {self.removed} removed, {self.kept} kept"
+
+
+def put_site(store: Store, site: Site) -> None:
+    """Set the site's name and time zone."""
+    with store.writing() as connection:
+        values = {"name": site.name, "timezone": site.timezone}
+        if connection.execute(update(SiteRow).values(values)).rowcount == 0:
+            connection.execute(insert(SiteRow).values(id=1, **values))
+
+
+def put_sensor(store: Store, sensor: Sensor) -> None:
+    """Set a sensor's settings and make its mounting known."""
+    with store.writing() as connection:
+        _mounting_id(connection, _sensor_id(connection, sensor), sensor.mounting)
+
+
+def record_span(
+    store: Store, sensor: Sensor, span: Span, passages: Iterable[Passage], chain_version: str
+) -> SpanChange:
+    """Store a whole span and its passages in one transaction.
+
+    A span is *read* by a version of the chain, for a mounting, under settings. Against what is stored:
+
+    - the same span with the same reading and passages: nothing changes;
+    - a span within a longer one of the same reading: nothing changes;
+    - a span that covers stored spans, each of them wholly: replaces them and their passages, whatever
+      their reading;
+    - any other overlap: refused, since one or the other would lose time that was listened to.
+
+    Raises
+    ------
+    StoreError
+        A partial overlap, or a passage that does not lie in the span. Nothing is changed.
+    """
+    rows = _rows_of(sensor, span, passages)
+    with store.writing() as connection:
+        sensor_id = _sensor_id(connection, sensor)
+        reading_id = _reading_id(connection, sensor_id, sensor, chain_version)
+        overlapping = _overlapping(connection, sensor_id, span)
+        for old in overlapping:
+            longer = old.started_us <= span.started_us and span.ended_us <= old.ended_us
+            same = (old.started_us, old.ended_us) == (span.started_us, span.ended_us)
+            if longer and not same and old.reading_id == reading_id:
+                return SpanChange(kept=len(_stored(connection, sensor_id, span)), already_stored=True)
+            if not (span.started_us <= old.started_us and old.ended_us <= span.ended_us):
+                raise StoreError(_overlap_text(sensor, span, old))
+
+        stored = _stored(connection, sensor_id, span)
+        new = {(*row, reading_id) for row in rows}
+        kept = len(stored & new)
+        change = SpanChange(added=len(new) - kept, removed=len(stored) - kept, kept=kept)
+        if len(overlapping) == 1 and stored == new and _is_row_of(overlapping[0], span, reading_id):
+            return replace(change, already_stored=True)
+
+        if overlapping:
+            connection.execute(delete(SpanRow).where(SpanRow.id.in_([old.id for old in overlapping])))
+            connection.execute(delete(PassageRow).where(*_of_span(sensor_id, span)))
+        connection.execute(
+            insert(SpanRow).values(
+                sensor_id=sensor_id,
+                reading_id=reading_id,
+                started_us=span.started_us,
+                ended_us=span.ended_us,
+                sample_rate_hz=span.sample_rate_hz,
+                clock_trusted=span.clock_trusted,
+            )
+        )
+        if rows:
+            _refuse_taken_crossings(connection, sensor, sensor_id, rows)
+            connection.execute(insert(PassageRow), _values(sensor_id, reading_id, rows))
+        return change
+
+
+def extend_span(
+    store: Store, sensor: Sensor, span: Span, passages: Iterable[Passage], chain_version: str
+) -> SpanChange:
+    """Store how far live listening got, and the passages found since, in one transaction.
+
+    The span is known by its start; its end only ever moves forward. Passages that are stored already
+    stay as they are, so that a batch may safely be handed in twice.
+
+    Raises
+    ------
+    StoreError
+        The span runs into another, or was begun under another reading. Nothing is changed.
+    """
+    rows = _rows_of(sensor, span, passages)
+    with store.writing() as connection:
+        sensor_id = _sensor_id(connection, sensor)
+        reading_id = _reading_id(connection, sensor_id, sensor, chain_version)
+        known = None
+        for old in _overlapping(connection, sensor_id, span):
+            if old.started_us != span.started_us or old.reading_id != reading_id:
+                raise StoreError(_overlap_text(sensor, span, old))
+            known = old
+        if known is None:
+            connection.execute(
+                insert(SpanRow).values(
+                    sensor_id=sensor_id,
+                    reading_id=reading_id,
+                    started_us=span.started_us,
+                    ended_us=span.ended_us,
+                    sample_rate_hz=span.sample_rate_hz,
+                    clock_trusted=span.clock_trusted,
+                )
+            )
+        elif known.ended_us < span.ended_us:
+            connection.execute(update(SpanRow).where(SpanRow.id == known.id).values(ended_us=span.ended_us))
+        if not rows:
+            return SpanChange()
+        before = len(_stored(connection, sensor_id, span))
+        dialect = sqlite if store.dialect == "sqlite" else postgresql
+        connection.execute(
+            dialect.insert(PassageRow).on_conflict_do_nothing(), _values(sensor_id, reading_id, rows)
+        )
+        added = len(_stored(connection, sensor_id, span)) - before
+        return SpanChange(added=added, kept=len(rows) - added)
+
+
+def _rows_of(sensor: Sensor, span: Span, passages: Iterable[Passage]) -> list[PassageCodes]:
+    """Rows in order of crossing, each crossing its own; refuses what does not lie in the span."""
+    if span.ended_us < span.started_us:
+        raise StoreError(f"a span of {sensor.name} ends before it starts, at {utc_text(span.started_us)}")
+    rows: list[PassageCodes] = []
+    for row in sorted((encode(passage) for passage in passages), key=_order):
+        outside_us = max(span.started_us - row.started_us, row.ended_us - span.ended_us, 0)
+        astray_us = max(row.started_us - row.crossed_us, row.crossed_us - row.ended_us, 0)
+        if outside_us > ROUNDING_US or astray_us > CROSSING_MARGIN_US or row.ended_us < row.started_us:
+            raise StoreError(
+                f"the passage of {sensor.name} crossing at {utc_text(row.crossed_us)} does not lie in "
+                f"the span from {utc_text(span.started_us)} to {utc_text(span.ended_us)}"
+            )
+        started_us = min(max(row.started_us, span.started_us), max(span.ended_us - 1, span.started_us))
+        row = row._replace(started_us=started_us, ended_us=max(min(row.ended_us, span.ended_us), started_us))
+        if rows and row.crossed_us <= rows[-1].crossed_us:
+            # Two movers at one instant: a microsecond, far below a sample, keeps both.
+            row = row._replace(crossed_us=rows[-1].crossed_us + 1)
+        rows.append(row)
+    return rows
+
+
+def _order(row: PassageCodes) -> tuple[int, ...]:
+    return tuple(-1 if value is None else value for value in row)
+
+
+def _values(sensor_id: int, reading_id: int, rows: Sequence[PassageCodes]) -> list[dict[str, Any]]:
+    return [{"sensor_id": sensor_id, "reading_id": reading_id, **row._asdict()} for row in rows]
+
+
+def _overlapping(connection: Connection, sensor_id: int, span: Span) -> Sequence[Row[Any]]:
+    """Find stored spans that share time, or their start, with a span."""
+    return connection.execute(
+        select(*SpanRow.__table__.columns)
+        .where(
+            SpanRow.sensor_id == sensor_id,
+            (SpanRow.started_us < span.ended_us) & (SpanRow.ended_us > span.started_us)
+            | (SpanRow.started_us == span.started_us),
+        )
+        .order_by(SpanRow.started_us)
+    ).all()
+
+
+def _of_span(sensor_id: int, span: Span) -> tuple[Any, ...]:
+    """Conditions for the passages of a span; the bounds of the crossing let the key find them."""
+    return (
+        PassageRow.sensor_id == sensor_id,
+        PassageRow.crossed_us >= span.started_us - CROSSING_MARGIN_US,
+        PassageRow.crossed_us <= span.ended_us + CROSSING_MARGIN_US,
+        PassageRow.started_us >= span.started_us,
+        PassageRow.started_us < max(span.ended_us, span.started_us + 1),
+    )
+
+
+def _stored(connection: Connection, sensor_id: int, span: Span) -> set[tuple[int | None, ...]]:
+    """Rows of a span as they are stored, each with its reading."""
+    columns = [getattr(PassageRow, name) for name in (*PassageCodes._fields, "reading_id")]
+    return {tuple(row) for row in connection.execute(select(*columns).where(*_of_span(sensor_id, span)))}
+
+
+def _is_row_of(row: Row[Any], span: Span, reading_id: int) -> bool:
+    return (row.started_us, row.ended_us, row.sample_rate_hz, row.clock_trusted, row.reading_id) == (
+        span.started_us,
+        span.ended_us,
+        span.sample_rate_hz,
+        span.clock_trusted,
+        reading_id,
+    )
+
+
+def _refuse_taken_crossings(
+    connection: Connection, sensor: Sensor, sensor_id: int, rows: Sequence[PassageCodes]
+) -> None:
+    """Refuse a crossing, just outside its span, that hits the very microsecond of a neighbour's."""
+    crossings = {row.crossed_us for row in rows}
+    taken = connection.execute(
+        select(PassageRow.crossed_us).where(
+            PassageRow.sensor_id == sensor_id,
+            PassageRow.crossed_us.between(min(crossings), max(crossings)),
+        )
+    ).scalars()
+    for crossed_us in taken:
+        if crossed_us in crossings:
+            raise StoreError(
+                f"{sensor.name} has a passage crossing at {utc_text(crossed_us)} in a neighbouring span: "
+                "replay the captures of both together"
+            )
+
+
+def _overlap_text(sensor: Sensor, span: Span, old: Row[Any]) -> str:
+    return (
+        f"{sensor.name}: {utc_text(span.started_us)} to {utc_text(span.ended_us)} overlaps a part of what "
+        f"is stored, {utc_text(old.started_us)} to {utc_text(old.ended_us)}: "
+        "replay all captures of that time together"
+    )
+
+
+def _sensor_id(connection: Connection, sensor: Sensor) -> int:
+    """Id of a sensor, made or brought up to date. Locks it, so that writers of one sensor take turns."""
+    values = {
+        "carrier_hz": sensor.carrier_hz,
+        "channels": sensor.channels.value,
+        "swap_iq": sensor.swap_iq,
+        "mains_hz": sensor.mains_hz,
+        "speed_bands_mps": json.dumps(list(sensor.speed_bands_mps)),
+        "min_speed_mps": sensor.min_speed_mps,
+        "max_speed_mps": sensor.max_speed_mps,
+        "highpass_hz": sensor.highpass_hz,
+        "approaching_name": sensor.approaching_name,
+        "receding_name": sensor.receding_name,
+    }
+    query = select(*SensorRow.__table__.columns).where(SensorRow.name == sensor.name).with_for_update()
+    row = connection.execute(query).one_or_none()
+    if row is None:
+        dialect = sqlite if connection.dialect.name == "sqlite" else postgresql
+        connection.execute(
+            dialect.insert(SensorRow).values(name=sensor.name, **values).on_conflict_do_nothing()
+        )
+        row = connection.execute(query).one()
+    if any(row._mapping[name] != value for name, value in values.items()):
+        connection.execute(update(SensorRow).where(SensorRow.id == row.id).values(values))
+    return int(row.id)
+
+
+def _mounting_id(connection: Connection, sensor_id: int, mounting: Mounting) -> int:
+    width = mounting.beam_width_deg or (None, None)
+    values = {
+        "sensor_id": sensor_id,
+        "aspect": mounting.aspect.value,
+        "height_m": mounting.height_m,
+        "offset_m": mounting.offset_m,
+        "beam_angle_deg": mounting.beam_angle_deg,
+        "tilt_deg": mounting.tilt_deg,
+        "beam_width_h_deg": width[0],
+        "beam_width_v_deg": width[1],
+        "since_us": mounting.since_us,
+    }
+    return _found_or_made(connection, MountingRow, values)
+
+
+def _reading_id(connection: Connection, sensor_id: int, sensor: Sensor, chain_version: str) -> int:
+    settings = {
+        "carrier_hz": sensor.carrier_hz,
+        "channels": sensor.channels.value,
+        "highpass_hz": sensor.highpass_hz,
+        "mains_hz": sensor.mains_hz,
+        "max_speed_mps": sensor.max_speed_mps,
+        "min_speed_mps": sensor.min_speed_mps,
+        "swap_iq": sensor.swap_iq,
+    }
+    values = {
+        "sensor_id": sensor_id,
+        "mounting_id": _mounting_id(connection, sensor_id, sensor.mounting),
+        "chain_version": chain_version,
+        "settings": json.dumps(settings),
+    }
+    return _found_or_made(connection, ReadingRow, values)
+
+
+def _found_or_made(
+    connection: Connection, table: type[MountingRow] | type[ReadingRow], values: dict[str, Any]
+) -> int:
+    """Id of the row with these values. The sensor's lock keeps two writers from making it twice."""
+    same = [
+        getattr(table, name).is_(None) if value is None else getattr(table, name) == value
+        for name, value in values.items()
+    ]
+    found = connection.execute(select(table.id).where(*same).order_by(table.id).limit(1)).scalar()
+    if found is None:
+        found = connection.execute(insert(table).values(values).returning(table.id)).scalar_one()
+    return int(found)

@@ -1,0 +1,153 @@
+"""The tables of the log.
+
+A *reading* is one way of reading a sensor's samples: the chain's version, the mounting and the
+settings that were in force. Spans and passages name their reading, so each passage tells which
+mounting and which version found it, at the price of one small integer.
+
+Which span a passage belongs to is not stored: spans of one sensor never overlap, and a passage
+lies in the span in which it began to be heard. This leaves the largest table with one index, its
+key, and no other. Measures are whole numbers in small units (see ``codes.py``), which makes rows
+small and equal on every database. The speed band is not stored either: it follows from the speed
+and the sensor's present bands.
+"""
+
+from __future__ import annotations
+
+from typing import Any, ClassVar
+
+from sqlalchemy import (
+    BigInteger,
+    CheckConstraint,
+    Double,
+    ForeignKey,
+    Integer,
+    MetaData,
+    SmallInteger,
+    String,
+    UniqueConstraint,
+)
+from sqlalchemy.orm import DeclarativeBase, Mapped, mapped_column
+
+
+class Base(DeclarativeBase):
+    """Names every constraint by rule, so that a migration can find it on any database."""
+
+    type_annotation_map: ClassVar[dict[Any, Any]] = {float: Double()}
+    metadata = MetaData(
+        naming_convention={
+            "ix": "ix_%(table_name)s_%(column_0_N_name)s",
+            "uq": "uq_%(table_name)s_%(column_0_N_name)s",
+            "ck": "ck_%(table_name)s_%(constraint_name)s",
+            "fk": "fk_%(table_name)s_%(column_0_N_name)s_%(referred_table_name)s",
+            "pk": "pk_%(table_name)s",
+        }
+    )
+
+
+class SiteRow(Base):
+    """The site: one row, since one store is one site's log."""
+
+    __tablename__ = "site"
+    __table_args__ = (CheckConstraint("id = 1", name="one_row"),)
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True, autoincrement=False)
+    name: Mapped[str] = mapped_column(String)
+    timezone: Mapped[str] = mapped_column(String)
+
+
+class SensorRow(Base):
+    """A sensor with its settings as last seen."""
+
+    __tablename__ = "sensor"
+    __table_args__ = (CheckConstraint("channels IN ('mono', 'iq')", name="channels"),)
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    name: Mapped[str] = mapped_column(String, unique=True)
+    carrier_hz: Mapped[float]
+    channels: Mapped[str] = mapped_column(String(8))
+    swap_iq: Mapped[bool]
+    mains_hz: Mapped[float]
+    speed_bands_mps: Mapped[str] = mapped_column(String)  # JSON list of ascending edges
+    min_speed_mps: Mapped[float]
+    max_speed_mps: Mapped[float]
+    highpass_hz: Mapped[float | None]
+    approaching_name: Mapped[str] = mapped_column(String)
+    receding_name: Mapped[str] = mapped_column(String)
+
+
+class MountingRow(Base):
+    """How a sensor looked at the path, from a date on."""
+
+    __tablename__ = "mounting"
+    __table_args__ = (CheckConstraint("aspect IN ('axial', 'oblique')", name="aspect"),)
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"))
+    aspect: Mapped[str] = mapped_column(String(8))
+    height_m: Mapped[float]
+    offset_m: Mapped[float]
+    beam_angle_deg: Mapped[float]
+    tilt_deg: Mapped[float]
+    beam_width_h_deg: Mapped[float | None]
+    beam_width_v_deg: Mapped[float | None]
+    since_us: Mapped[int | None] = mapped_column(BigInteger)  # NULL: since ever
+
+
+class ReadingRow(Base):
+    """One way of reading a sensor's samples."""
+
+    __tablename__ = "reading"
+    __table_args__ = (UniqueConstraint("sensor_id", "mounting_id", "chain_version", "settings"),)
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"))
+    mounting_id: Mapped[int] = mapped_column(ForeignKey("mounting.id"))
+    chain_version: Mapped[str] = mapped_column(String)
+    settings: Mapped[str] = mapped_column(String)  # JSON of what else bears on the result
+
+
+class SpanRow(Base):
+    """An unbroken stretch of listening, [started_us, ended_us). Spans of a sensor never overlap."""
+
+    __tablename__ = "span"
+    __table_args__ = (
+        UniqueConstraint("sensor_id", "started_us"),
+        CheckConstraint("ended_us >= started_us", name="order"),
+    )
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"))
+    reading_id: Mapped[int] = mapped_column(ForeignKey("reading.id"))
+    started_us: Mapped[int] = mapped_column(BigInteger)
+    ended_us: Mapped[int] = mapped_column(BigInteger)
+    sample_rate_hz: Mapped[float]
+    clock_trusted: Mapped[bool]
+
+
+class PassageRow(Base):
+    """What one mover did, keyed by its sensor and the time of its crossing."""
+
+    __tablename__ = "passage"
+    __table_args__ = (
+        CheckConstraint("ended_us >= started_us", name="order"),
+        CheckConstraint("story IN (0, 1, 2)", name="story"),
+        CheckConstraint("direction IN (0, 1, 2)", name="direction"),
+        CheckConstraint("mover IN (1, 2)", name="mover"),
+        CheckConstraint("flags >= 0", name="flags"),
+        # The key is the table: rows lie in the order in which they are read.
+        {"sqlite_with_rowid": False},
+    )
+
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"), primary_key=True)
+    crossed_us: Mapped[int] = mapped_column(BigInteger, primary_key=True)
+    started_us: Mapped[int] = mapped_column(BigInteger)
+    ended_us: Mapped[int] = mapped_column(BigInteger)
+    reading_id: Mapped[int] = mapped_column(ForeignKey("reading.id"))
+    story: Mapped[int] = mapped_column(SmallInteger)
+    direction: Mapped[int] = mapped_column(SmallInteger)
+    mover: Mapped[int | None] = mapped_column(SmallInteger)
+    flags: Mapped[int] = mapped_column(SmallInteger)
+    direction_confidence_ppm: Mapped[int | None] = mapped_column(Integer)
+    speed_umps: Mapped[int | None] = mapped_column(Integer)
+    speed_se_umps: Mapped[int | None] = mapped_column(Integer)
+    snr_mdb: Mapped[int | None] = mapped_column(Integer)
