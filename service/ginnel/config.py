@@ -13,7 +13,7 @@ import os
 import tomllib
 import zoneinfo
 from collections.abc import Mapping
-from datetime import UTC, datetime
+from datetime import datetime
 from importlib import resources
 from itertools import pairwise
 from pathlib import Path
@@ -33,11 +33,10 @@ from pydantic_settings import BaseSettings, PydanticBaseSettingsSource, Settings
 
 from ginnel.config_errors import describe
 from ginnel.errors import ConfigError
-from ginnel.words import US_PER_S, Aspect, Channels, Mounting, Sensor
+from ginnel.times import to_us
+from ginnel.words import Aspect, Channels, Mounting, Sensor, Site
 
 DEFAULT_FILE = Path("ginnel.toml")
-
-_EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
 
 
 def _listed(value: Any) -> Any:
@@ -76,10 +75,9 @@ class SiteSettings(_Section):
             raise ValueError("not an IANA time zone such as Europe/Dublin") from exc
         return name
 
-    @property
-    def zone(self) -> zoneinfo.ZoneInfo:
-        """The site's time zone."""
-        return zoneinfo.ZoneInfo(self.timezone)
+    def to_site(self) -> Site:
+        """Give the site as the store and the reports need it."""
+        return Site(name=self.name, timezone=self.timezone)
 
 
 class StoreSettings(_Section):
@@ -265,8 +263,7 @@ def _mounting(values: Mapping[str, Any]) -> Mounting:
     """One complete mounting as the measuring chain's word."""
     fields = {key: value for key, value in values.items() if key != "since"}
     since: datetime | None = values["since"]
-    since_us = None if since is None else round((since - _EPOCH).total_seconds() * US_PER_S)
-    return Mounting(**fields, since_us=since_us)
+    return Mounting(**fields, since_us=None if since is None else to_us(since))
 
 
 def find_file(given: Path | None, environ: Mapping[str, str]) -> Path | None:

@@ -62,7 +62,7 @@ def settings_from(text: str, folder: Path) -> Settings:
 def test_the_contracts_own_example_is_read_key_by_key(tmp_path: Path) -> None:
     settings = settings_from(CONTRACT, tmp_path)
     assert settings.site.name == "Tannery annex"
-    assert settings.site.zone.key == "Europe/Dublin"
+    assert settings.site.to_site().timezone == "Europe/Dublin"
     sensor = settings.find_sensor(None).to_sensor()
     assert sensor.name == "north-corridor"
     assert sensor.carrier_hz == 10.525e9
