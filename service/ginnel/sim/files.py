@@ -1,0 +1,121 @@
+"""Scenes as captures on disk: WAV or SigMF, with the truth beside them as CSV and JSON."""
+
+from __future__ import annotations
+
+import csv
+import json
+from datetime import UTC, datetime
+from pathlib import Path
+
+import numpy as np
+
+from ginnel.sim.movers import TrueMover
+from ginnel.sim.scene import Scene
+from ginnel.words import US_PER_S, Channels, SampleArray, Sensor
+
+TRUTH_COLUMNS = (
+    "started_at",
+    "crossed_at",
+    "ended_at",
+    "direction",
+    "mean_speed_mps",
+    "story",
+    "kind",
+    "power_db",
+    "cut",
+    "name",
+)
+
+
+def utc_text(time_us: int) -> str:
+    """RFC 3339 text in UTC, to the microsecond."""
+    seconds, us = divmod(time_us, US_PER_S)
+    return f"{datetime.fromtimestamp(seconds, UTC):%Y-%m-%dT%H:%M:%S}.{us:06d}Z"
+
+
+def capture_name(sensor_name: str, started_us: int) -> str:
+    """File name, without suffix, that tells the start time: ``north-20260302T081500Z``."""
+    if started_us % US_PER_S:
+        raise ValueError("a capture that carries its time in its name must start at a whole second")
+    return f"{sensor_name}-{datetime.fromtimestamp(started_us // US_PER_S, UTC):%Y%m%dT%H%M%SZ}"
+
+
+def _columns(samples: SampleArray, sensor: Sensor) -> SampleArray:
+    """Channels as wired: shape (n,) mono, (n, 2) I/Q, crossed where the sensor is."""
+    if sensor.channels is Channels.MONO:
+        return samples
+    pair = (samples.imag, samples.real) if sensor.swap_iq else (samples.real, samples.imag)
+    return np.column_stack(pair)
+
+
+def write_wav(scene: Scene, path: Path) -> Path:
+    """Write a 16-bit WAV file; its name should carry the start time (see `capture_name`)."""
+    import soundfile
+
+    channels = 2 if scene.sensor.channels is Channels.IQ else 1
+    rate_hz = round(scene.sample_rate_hz)
+    if rate_hz != scene.sample_rate_hz:
+        raise ValueError(f"a WAV file has a whole sample rate, not {scene.sample_rate_hz=}")
+    with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16") as file:
+        for block in scene.blocks():
+            file.write(_columns(block, scene.sensor))
+    return path
+
+
+def write_sigmf(scene: Scene, path: Path, started_us: int) -> Path:
+    """Write ``path`` with suffixes .sigmf-data and .sigmf-meta (ri16_le or ci16_le); returns the latter."""
+    import sigmf
+
+    is_iq = scene.sensor.channels is Channels.IQ
+    data = path.with_name(path.name + ".sigmf-data")
+    with data.open("wb") as file:
+        for block in scene.blocks():
+            whole = np.clip(np.rint(_columns(block, scene.sensor) * 32768.0), -32768, 32767)
+            file.write(whole.astype("<i2").tobytes())
+    described = sigmf.SigMFFile(
+        data_file=str(data),
+        global_info={
+            sigmf.SigMFFile.DATATYPE_KEY: "ci16_le" if is_iq else "ri16_le",
+            sigmf.SigMFFile.SAMPLE_RATE_KEY: float(scene.sample_rate_hz),
+            sigmf.SigMFFile.RECORDER_KEY: "ginnel simulate",
+            sigmf.SigMFFile.DESCRIPTION_KEY: f"simulated, sensor {scene.sensor.name}",
+        },
+    )
+    described.add_capture(0, metadata={sigmf.SigMFFile.DATETIME_KEY: utc_text(started_us)})
+    meta = path.with_name(path.name + ".sigmf-meta")
+    described.tofile(str(meta), overwrite=True)
+    return meta
+
+
+def truth_row(true: TrueMover, started_us: int) -> dict[str, str | float | bool | None]:
+    """One line of a truth file."""
+
+    def at(time_s: float | None) -> str | None:
+        return None if time_s is None else utc_text(started_us + round(time_s * US_PER_S))
+
+    return {
+        "started_at": at(true.started_s),
+        "crossed_at": at(true.crossed_s),
+        "ended_at": at(true.ended_s),
+        "direction": true.direction.value,
+        "mean_speed_mps": round(true.mean_speed_mps, 4),
+        "story": true.story.value,
+        "kind": true.kind.value,
+        "power_db": round(true.power_db, 2),
+        "cut": true.cut,
+        "name": true.name,
+    }
+
+
+def write_truth(scene: Scene, path: Path, started_us: int) -> Path:
+    """Write the truth as CSV or JSON, by the suffix of the path."""
+    rows = [truth_row(true, started_us) for true in scene.truth()]
+    if path.suffix == ".json":
+        told = {"sensor": scene.sensor.name, "started_at": utc_text(started_us), "movers": rows}
+        path.write_text(json.dumps(told, indent=2) + "\n", encoding="utf-8")
+        return path
+    with path.open("w", newline="", encoding="utf-8") as file:
+        writer = csv.DictWriter(file, TRUTH_COLUMNS)
+        writer.writeheader()
+        writer.writerows({**row, "cut": "yes" if row["cut"] else "no"} for row in rows)
+    return path
