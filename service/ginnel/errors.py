@@ -7,6 +7,7 @@
     +-- CaptureError         samples cannot be had
     |   +-- CaptureFormatError   a file is not what it claims to be
     |   +-- CaptureTimeError     nobody knows when it starts, or it overlaps another
+    +-- ExportError          a file cannot be written
     +-- StoreError           the log cannot be read or written
         +-- StoreBusyError       locked or unreachable: try again
         +-- SchemaMismatchError  made by another version: `ginnel store upgrade`
@@ -33,6 +34,10 @@ class CaptureFormatError(CaptureError):
 
 class CaptureTimeError(CaptureError):
     """Nobody knows when a capture starts, or it overlaps another."""
+
+
+class ExportError(GinnelError):
+    """A file cannot be written."""
 
 
 class StoreError(GinnelError):

@@ -22,4 +22,4 @@ def from_us(moment_us: int, zone: tzinfo = UTC) -> datetime:
 
 def utc_text(moment_us: int) -> str:
     """RFC 3339 in UTC with all six digits: ``2026-03-02T09:15:04.250000Z``."""
-    return f"{from_us(moment_us):%Y-%m-%dT%H:%M:%S.%f}Z"
+    return from_us(moment_us).isoformat(timespec="microseconds").replace("+00:00", "Z")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import heapq
 import json
-from collections.abc import Iterator, Sequence
+from collections.abc import Collection, Generator, Iterator, Sequence
 from contextlib import ExitStack
 from dataclasses import dataclass
 from typing import Any
@@ -128,8 +128,8 @@ def spans(
         ]
 
 
-def extent_us(store: Store, sensor: str | None = None) -> tuple[int, int] | None:
-    """From the first to the last moment of which the log knows anything, half-open; None when empty."""
+def extent_us(store: Store, sensor: str | Collection[str] | None = None) -> tuple[int, int] | None:
+    """Find the first and the last moment the log knows anything of, half-open; None when empty."""
     heard = select(func.min(SpanRow.started_us), func.max(SpanRow.ended_us))
     crossed = select(func.min(PassageRow.crossed_us), func.max(PassageRow.crossed_us) + 1)
     with store.reading() as connection:
@@ -146,16 +146,16 @@ def extent_us(store: Store, sensor: str | None = None) -> tuple[int, int] | None
 
 def iter_passages(
     store: Store,
-    sensor: str | None = None,
+    sensor: str | Collection[str] | None = None,
     start_us: int | None = None,
     end_us: int | None = None,
     *,
     with_uncounted: bool = False,
-) -> Iterator[LoggedPassage]:
-    """Passages that cross in [start_us, end_us), in order of crossing, in constant memory.
+) -> Generator[LoggedPassage]:
+    """Passages of a sensor, of some or of all, in order of crossing, in constant memory.
 
-    A view of the store stays open until the iterator ends or is closed. Only passages that count
-    are given, unless turn-backs and fidgeting are asked for too.
+    Given are those that cross in [start_us, end_us) and count, with turn-backs and fidgeting only if
+    asked for. A view of the store stays open until the iterator ends or is closed.
     """
     with store.reading() as connection, ExitStack() as stack:
         readings = _readings(connection)
@@ -229,14 +229,15 @@ def _logged(rows: Any, sensor: str, readings: dict[int, tuple[Mounting, str]]) -
         )
 
 
-def _known(connection: Connection, sensor: str | None) -> list[tuple[int, str]]:
-    """Ids and names of all sensors, or of the one named."""
+def _known(connection: Connection, sensor: str | Collection[str] | None) -> list[tuple[int, str]]:
+    """Ids and names of all sensors, or of those named."""
     rows = connection.execute(select(SensorRow.id, SensorRow.name).order_by(SensorRow.name)).all()
-    known = [(row.id, row.name) for row in rows if sensor in (None, row.name)]
-    if sensor is not None and not known:
-        names = ", ".join(row.name for row in rows) or "none yet"
-        raise StoreError(f"the store knows no sensor {sensor!r}; it knows: {names}")
-    return known
+    known = {row.name: row.id for row in rows}
+    wanted = known.keys() if sensor is None else {sensor} if isinstance(sensor, str) else set(sensor)
+    if unknown := sorted(wanted - known.keys()):
+        names = ", ".join(known) or "none yet"
+        raise StoreError(f"the store knows no sensor {unknown[0]!r}; it knows: {names}")
+    return [(known[name], name) for name in sorted(wanted)]
 
 
 def _readings(connection: Connection) -> dict[int, tuple[Mounting, str]]:

@@ -1,0 +1,42 @@
+"""What the log knows of the site and its sensors, for whoever must judge the numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from ginnel import store as log
+from ginnel.store import Store
+from ginnel.words import Mounting, Sensor, Site
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SensorFacts:
+    """A sensor with every mounting and version of the chain that its log was made with."""
+
+    sensor: Sensor
+    mountings: tuple[Mounting, ...]
+    chain_versions: tuple[str, ...]
+
+
+def site(store: Store) -> Site:
+    """Get the site; without a name, and in UTC, while nobody has set it."""
+    return log.site(store) or Site(name="")
+
+
+def sensor_facts(store: Store, sensors: Sequence[str] | None = None) -> tuple[SensorFacts, ...]:
+    """Tell of the sensors asked for, or of all, in order of name."""
+    heard = log.spans(store)
+    facts = []
+    for sensor in log.sensors(store):
+        if sensors is not None and sensor.name not in sensors:
+            continue
+        own = [span for span in heard if span.sensor == sensor.name]
+        facts.append(
+            SensorFacts(
+                sensor=sensor,
+                mountings=tuple(dict.fromkeys(span.mounting for span in own)) or (sensor.mounting,),
+                chain_versions=tuple(sorted({span.chain_version for span in own})),
+            )
+        )
+    return tuple(facts)
