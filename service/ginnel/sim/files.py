@@ -75,13 +75,13 @@ def write_sigmf(scene: Scene, path: Path, started_us: int) -> Path:
     described = sigmf.SigMFFile(
         data_file=str(data),
         global_info={
-            sigmf.SigMFFile.DATATYPE_KEY: "ci16_le" if is_iq else "ri16_le",
-            sigmf.SigMFFile.SAMPLE_RATE_KEY: float(scene.sample_rate_hz),
-            sigmf.SigMFFile.RECORDER_KEY: "ginnel simulate",
-            sigmf.SigMFFile.DESCRIPTION_KEY: f"simulated, sensor {scene.sensor.name}",
+            "core:datatype": "ci16_le" if is_iq else "ri16_le",
+            "core:sample_rate": float(scene.sample_rate_hz),
+            "core:recorder": "ginnel simulate",
+            "core:description": f"simulated, sensor {scene.sensor.name}",
         },
     )
-    described.add_capture(0, metadata={sigmf.SigMFFile.DATETIME_KEY: utc_text(started_us)})
+    described.add_capture(0, metadata={"core:datetime": utc_text(started_us)})
     meta = path.with_name(path.name + ".sigmf-meta")
     described.tofile(str(meta), overwrite=True)
     return meta

@@ -1,0 +1,142 @@
+"""Beam, range law, walls and the samples of one point that moves.
+
+Doppler figures: the check table for 10.525 and 24.125 GHz, c exact. The range law is the radar equation.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import pytest
+
+from ginnel.sim import Beam, Mover, Receiver, Scene, Wall, constant_speed
+from ginnel.sim.sensor import beam_gain, echo_paths
+from ginnel.words import Channels, Direction, FloatArray, Mounting, MoverKind, Sensor
+
+LEVEL = Mounting(height_m=1.0)
+CLEAN = Receiver(bits=None)
+
+
+@dataclass(frozen=True)
+class Point:
+    """One scatterer of 1 m^2, a metre above the floor."""
+
+    def cycle_rate_hz(self, speed_mps: FloatArray) -> FloatArray:
+        return np.zeros_like(speed_mps)
+
+    def places_m(self, phase: FloatArray, speed_mps: FloatArray) -> FloatArray:
+        return np.stack([np.zeros_like(phase), np.zeros_like(phase), np.ones_like(phase)], -1)[None]
+
+    def powers(self, facing: FloatArray) -> FloatArray:
+        return np.ones((1, *facing.shape))
+
+
+def point_scene(
+    speed_mps: float,
+    direction: Direction,
+    carrier_hz: float = 10.525e9,
+    channels: Channels = Channels.IQ,
+    y_m: float = 0.0,
+) -> Scene:
+    path = constant_speed(
+        crossed_s=8.0, speed_mps=speed_mps, direction=direction, far_m=30, behind_m=30, y_m=y_m
+    )
+    mover = Mover(path=path, body=Point(), kind=MoverKind.ON_WHEELS, flicker_db=0.0)
+    sensor = Sensor(name="s", carrier_hz=carrier_hz, channels=channels, mounting=LEVEL)
+    return Scene(
+        sensor=sensor,
+        duration_s=16,
+        movers=(mover,),
+        receiver=CLEAN,
+        beam=Beam(width_deg=(1e4, 1e4)),
+        peak_snr_db=200.0,
+    )
+
+
+def level_db(x_m: float) -> float:
+    places = np.array([[[x_m, 0.0, 1.0]]])
+    _, levels = echo_paths(places, np.ones((1, 1)), LEVEL, Beam(), ())
+    return float(20 * np.log10(levels[0, 0]))
+
+
+@pytest.mark.parametrize("x_m", [2.0, 5.0, 12.5])
+def test_doubling_the_range_costs_12_04_db(x_m: float) -> None:
+    assert level_db(2 * x_m) - level_db(x_m) == pytest.approx(-12.0412, abs=1e-4)
+
+
+def test_samples_of_a_passing_point_obey_the_range_law() -> None:
+    samples = point_scene(1.0, Direction.APPROACHING).samples()
+    at_6_m, at_3_m = (abs(samples[round((8.0 - x) * 8000)]) for x in (6.0, 3.0))
+    assert 20 * np.log10(at_3_m / at_6_m) == pytest.approx(12.0412, abs=0.01)
+
+
+@pytest.mark.parametrize(("carrier_hz", "expected_hz"), [(10.525e9, 94.088), (24.125e9, 215.666)])
+@pytest.mark.parametrize("direction", [Direction.APPROACHING, Direction.RECEDING])
+def test_a_walking_point_gives_the_tabled_doppler_with_its_sign(
+    carrier_hz: float, expected_hz: float, direction: Direction
+) -> None:
+    samples = point_scene(1.34, direction, carrier_hz).samples()
+    begin = 2.0 if direction is Direction.APPROACHING else 10.0
+    part = samples[round(begin * 8000) : round((begin + 4) * 8000)].astype(np.complex128)
+    # Mean phase step: exact for a pure tone.
+    tone_hz = np.angle(part[1:] * part[:-1].conj()).mean() * 8000 / (2 * np.pi)
+    sign = 1 if direction is Direction.APPROACHING else -1
+    assert tone_hz == pytest.approx(sign * expected_hz, abs=2e-3)
+
+
+def test_sideways_offset_bends_the_doppler_by_the_cosine() -> None:
+    # v x / sqrt(x^2 + d^2) at x = d is 1/sqrt(2): 66.530 of 94.088 Hz.
+    samples = point_scene(1.34, Direction.APPROACHING, y_m=3.0).samples().astype(np.complex128)
+    at = round((8.0 - 3.0 / 1.34) * 8000)
+    part = samples[at - 200 : at + 200]
+    tone_hz = np.angle(part[1:] * part[:-1].conj()).mean() * 8000 / (2 * np.pi)
+    assert tone_hz == pytest.approx(94.088 * 0.70711, abs=0.1)
+
+
+def test_mono_is_the_real_part_of_the_pair() -> None:
+    mono = point_scene(1.34, Direction.APPROACHING, channels=Channels.MONO).samples()
+    pair = point_scene(1.34, Direction.APPROACHING).samples()
+    np.testing.assert_allclose(mono, pair.real, atol=1e-7)
+
+
+def test_beam_is_half_power_at_half_its_width_and_turns_with_the_mounting() -> None:
+    mounting = Mounting(height_m=1.0, beam_angle_deg=30.0, tilt_deg=10.0, beam_width_deg=(60.0, 30.0))
+    quiet = Beam(floor_db=-200.0)
+
+    def gain_db(side_deg: float, up_deg: float) -> float:
+        side, up = np.deg2rad(side_deg), np.deg2rad(up_deg)
+        x, y, z = np.cos(up) * np.cos(side), np.cos(up) * np.sin(side), np.sin(up)
+        gain = beam_gain(quiet, mounting, np.array([x]), np.array([y]), np.array([z]))
+        return float(10 * np.log10(gain[0]))
+
+    assert gain_db(30, -10) == pytest.approx(0.0, abs=1e-9)
+    assert gain_db(30, -10 + 15) == pytest.approx(-3.0103, abs=1e-3)
+    assert gain_db(30, -10 - 15) == pytest.approx(-3.0103, abs=1e-3)
+    # Sideways within the beam's own plane: 30 degrees off its axis.
+    tilt = np.deg2rad(10)
+    side = np.deg2rad(30)
+    ahead, left = np.cos(side), np.sin(side)
+    level, z = ahead * np.cos(tilt), -ahead * np.sin(tilt)
+    x = level * np.cos(side) - left * np.sin(side)
+    y = level * np.sin(side) + left * np.cos(side)
+    gain = beam_gain(quiet, mounting, np.array([x]), np.array([y]), np.array([z]))
+    assert 10 * np.log10(gain[0]) == pytest.approx(-3.0103, abs=1e-3)
+
+
+def test_behind_the_sensor_only_the_floor_is_left_and_lobes_vary_it() -> None:
+    x = np.full(2000, -5.0)
+    y = np.linspace(-3, 3, 2000)
+    flat = beam_gain(Beam(floor_db=-20), LEVEL, x, y, np.zeros(2000))
+    np.testing.assert_allclose(10 * np.log10(flat), -20.0, atol=0.05)
+    lobed = 10 * np.log10(beam_gain(Beam(floor_db=-20, side_lobes_db=6), LEVEL, x, y, np.zeros(2000)))
+    assert np.ptp(lobed) > 3.0
+    assert abs(lobed + 20).max() < 13.0
+
+
+def test_a_wall_adds_an_image_path_that_is_longer_and_weaker() -> None:
+    places = np.array([[[4.0, 0.0, 1.0]]])
+    ranges_m, levels = echo_paths(places, np.ones((1, 1)), LEVEL, Beam(), (Wall(y_m=1.5, reflection=0.3),))
+    # By hand: the image lies at y = 3, so 5 m off by Pythagoras; half of 4 + 5 m.
+    assert ranges_m[:, 0] == pytest.approx([4.0, 4.5])
+    assert levels[1, 0] < 0.6 * levels[0, 0]
