@@ -4,14 +4,18 @@ from __future__ import annotations
 
 import csv
 import json
-from datetime import UTC, datetime
+from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import numpy as np
 
 from ginnel.sim.movers import TrueMover
 from ginnel.sim.scene import Scene
+from ginnel.times import from_us, utc_text
 from ginnel.words import US_PER_S, Channels, SampleArray, Sensor
+
+#: Told after each block: seconds of the scene written since the last call.
+OnProgress = Callable[[float], None]
 
 TRUTH_COLUMNS = (
     "started_at",
@@ -27,17 +31,11 @@ TRUTH_COLUMNS = (
 )
 
 
-def utc_text(time_us: int) -> str:
-    """RFC 3339 text in UTC, to the microsecond."""
-    seconds, us = divmod(time_us, US_PER_S)
-    return f"{datetime.fromtimestamp(seconds, UTC):%Y-%m-%dT%H:%M:%S}.{us:06d}Z"
-
-
 def capture_name(sensor_name: str, started_us: int) -> str:
     """File name, without suffix, that tells the start time: ``north-20260302T081500Z``."""
     if started_us % US_PER_S:
         raise ValueError("a capture that carries its time in its name must start at a whole second")
-    return f"{sensor_name}-{datetime.fromtimestamp(started_us // US_PER_S, UTC):%Y%m%dT%H%M%SZ}"
+    return f"{sensor_name}-{from_us(started_us):%Y%m%dT%H%M%SZ}"
 
 
 def _columns(samples: SampleArray, sensor: Sensor) -> SampleArray:
@@ -48,7 +46,14 @@ def _columns(samples: SampleArray, sensor: Sensor) -> SampleArray:
     return np.column_stack(pair)
 
 
-def write_wav(scene: Scene, path: Path) -> Path:
+def _told_blocks(scene: Scene, on_progress: OnProgress | None) -> Iterator[SampleArray]:
+    for block in scene.blocks():
+        yield block
+        if on_progress is not None:
+            on_progress(len(block) / scene.sample_rate_hz)
+
+
+def write_wav(scene: Scene, path: Path, *, on_progress: OnProgress | None = None) -> Path:
     """Write a 16-bit WAV file; its name should carry the start time (see `capture_name`)."""
     import soundfile
 
@@ -57,19 +62,19 @@ def write_wav(scene: Scene, path: Path) -> Path:
     if rate_hz != scene.sample_rate_hz:
         raise ValueError(f"a WAV file has a whole sample rate, not {scene.sample_rate_hz=}")
     with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16") as file:
-        for block in scene.blocks():
+        for block in _told_blocks(scene, on_progress):
             file.write(_columns(block, scene.sensor))
     return path
 
 
-def write_sigmf(scene: Scene, path: Path, started_us: int) -> Path:
+def write_sigmf(scene: Scene, path: Path, started_us: int, *, on_progress: OnProgress | None = None) -> Path:
     """Write ``path`` with suffixes .sigmf-data and .sigmf-meta (ri16_le or ci16_le); returns the latter."""
     import sigmf
 
     is_iq = scene.sensor.channels is Channels.IQ
     data = path.with_name(path.name + ".sigmf-data")
     with data.open("wb") as file:
-        for block in scene.blocks():
+        for block in _told_blocks(scene, on_progress):
             whole = np.clip(np.rint(_columns(block, scene.sensor) * 32768.0), -32768, 32767)
             file.write(whole.astype("<i2").tobytes())
     described = sigmf.SigMFFile(

@@ -62,3 +62,10 @@ def test_truth_is_told_in_csv_and_json(tmp_path: Path) -> None:
     told = json.loads(write_truth(made, tmp_path / "truth.json", STARTED_US).read_text(encoding="utf-8"))
     assert told["sensor"] == "north"
     assert told["movers"][0]["crossed_at"] == row["crossed_at"]
+
+
+def test_writers_tell_how_much_of_the_scene_is_done(tmp_path: Path) -> None:
+    made = scene(Channels.MONO)
+    told: list[float] = []
+    write_wav(made, tmp_path / "x.wav", on_progress=told.append)
+    assert sum(told) == pytest.approx(5.0)
