@@ -21,7 +21,7 @@ def init(folder: Path, site: str, timezone: str | None, quiet: bool) -> None:
     """
     from ginnel.config import DEFAULT_FILE, default_config_text, load_settings
     from ginnel.errors import ConfigError
-    from ginnel.store import upgrade
+    from ginnel.store import open_store, put_site
 
     file = folder / DEFAULT_FILE
     text = default_config_text(site, timezone or machine_zone())
@@ -38,7 +38,8 @@ def init(folder: Path, site: str, timezone: str | None, quiet: bool) -> None:
     except ConfigError:
         file.unlink()
         raise
-    upgrade(settings.store.url)
+    with open_store(settings.store.url, create=True) as store:
+        put_site(store, settings.site.to_site())
     if not quiet:
         click.echo(f"{file} is written; say there how the sensor is mounted.")
         click.echo(f"The store is {settings.store.url}")

@@ -50,13 +50,13 @@ def bind(settings: Settings, port: int) -> Server:
     GinnelError
         The port is in use or not allowed.
     """
-    import waitress
+    from waitress.server import create_server
 
     from ginnel.web.app import create_app
 
     app = create_app(settings)
     try:
-        return Server(waitress.create_server(app, host=LOOPBACK, port=port, threads=4, ident="ginnel"))
+        return Server(create_server(app, host=LOOPBACK, port=port, threads=4, ident="ginnel"))
     except OSError as exc:
         why = "in use already" if exc.errno == errno.EADDRINUSE else str(exc.strerror)
         raise GinnelError(f"port {port} is {why}: choose another with --port") from exc
