@@ -9,6 +9,7 @@ from zoneinfo import ZoneInfo
 
 import flask
 from flask import Blueprint, current_app, render_template, request
+from werkzeug.exceptions import SecurityError
 
 from ginnel.reports import overview as about
 from ginnel.store import Store
@@ -79,6 +80,8 @@ def charts_json() -> flask.Response:
 @pages.app_errorhandler(404)
 def not_so(error: Exception) -> tuple[str, int]:
     """Say in a line what was wrong with the address."""
+    if isinstance(error, SecurityError):  # an untrusted host has no addresses to make a page with
+        return "Open the dashboard by the address that ginnel serve printed.", 400
     code = getattr(error, "code", 404)
     text = getattr(error, "description", None) or "There is nothing at this address."
     return render_template(
