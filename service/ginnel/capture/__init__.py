@@ -1,0 +1,34 @@
+"""Where samples come from, with their time and gaps.
+
+In: files (later sound cards, pipes, sockets). Out: blocks of samples and gaps, dated in UTC.
+May not know what samples mean: no spectra, no passages, no store. Faults of files become one clear
+line here (`CaptureFormatError`, `CaptureTimeError`), before any sample is handed on.
+"""
+
+from ginnel.capture.recordings import (
+    RATE_LIMITS_HZ,
+    Recording,
+    Segment,
+    find_captures,
+    open_recording,
+    open_recordings,
+    sample_us,
+)
+from ginnel.capture.sound_files import RawFormat
+from ginnel.capture.spans import Arrangement, RecordedSpan, arrange
+from ginnel.capture.starts import StartSource
+
+__all__ = [
+    "RATE_LIMITS_HZ",
+    "Arrangement",
+    "RawFormat",
+    "RecordedSpan",
+    "Recording",
+    "Segment",
+    "StartSource",
+    "arrange",
+    "find_captures",
+    "open_recording",
+    "open_recordings",
+    "sample_us",
+]
