@@ -27,6 +27,7 @@ _RAW_SUBTYPES = {
     "f64": "DOUBLE",
 }
 _SCAN_SAMPLES = 1 << 18
+_MOST_SAMPLES = 1 << 48  # libsndfile answers 2^63 - 1 where a FLAC header leaves the length open
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -159,6 +160,11 @@ def look_at_sound_file(path: Path, sensor: Sensor, raw: RawFormat | None) -> Sou
                 header_us=text_us(file.date) if header_us is None and len(file.date) > 10 else header_us,
             )
             n_channels = int(file.channels)
+            if found.n_samples > _MOST_SAMPLES:
+                raise CaptureFormatError(
+                    f"{path}: does not say how many samples it holds, as if written into a pipe; "
+                    "encode it anew"
+                )
             if found.container == "FLAC" and found.n_samples > 0:
                 _check_last_sample(path, file, found.n_samples)
     except soundfile.LibsndfileError as exc:
