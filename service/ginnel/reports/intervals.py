@@ -128,7 +128,7 @@ def _clock_edges(first_us: int, last_us: int, step_us: int, zone: tzinfo) -> Int
         local_us = begin_us + offset_us
         aligned_us = -(-local_us // step_us) * step_us - offset_us
         inner = np.arange(aligned_us, stop_us, step_us, dtype=np.int64)
-        shown_before = (begin_us + _offset_us(begin_us - 1, zone)) // step_us
+        shown_before = (begin_us - 1 + _offset_us(begin_us - 1, zone)) // step_us
         if aligned_us != begin_us and (begin_us == first_us or shown_before != local_us // step_us):
             inner = np.concatenate([[begin_us], inner])
         pieces.append(inner)
