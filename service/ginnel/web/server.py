@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import socket
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
 
@@ -55,8 +56,13 @@ def bind(settings: Settings, port: int) -> Server:
     from ginnel.web.app import create_app
 
     app = create_app(settings)
+    # a socket of our own: waitress leaves its open when the port is taken
+    taken = socket.socket(socket.AF_INET, socket.SOCK_STREAM)
     try:
-        return Server(create_server(app, host=LOOPBACK, port=port, threads=4, ident="ginnel"))
+        taken.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
+        taken.bind((LOOPBACK, port))
+        return Server(create_server(app, sockets=[taken], threads=4, ident="ginnel"))
     except OSError as exc:
+        taken.close()
         why = "in use already" if exc.errno == errno.EADDRINUSE else str(exc.strerror)
         raise GinnelError(f"port {port} is {why}: choose another with --port") from exc

@@ -1,0 +1,190 @@
+"""An invented morning at an invented place: captures, the real chain over them, and how well it counted.
+
+Two sensors, three hours each, an hour in a file, with twelve minutes that nobody recorded. Who walks
+there is drawn from a seed, so that everybody sees the same morning.
+"""
+
+from __future__ import annotations
+
+import multiprocessing
+from collections.abc import Callable, Sequence
+from concurrent.futures import ProcessPoolExecutor, as_completed
+from dataclasses import dataclass
+from pathlib import Path
+
+from ginnel import sim
+from ginnel.capture import RecordedSpan, arrange, find_captures, open_recording
+from ginnel.chain import CHAIN_VERSION
+from ginnel.config import Settings, load_settings
+from ginnel.errors import ConfigError, GinnelError
+from ginnel.replay import find_passages
+from ginnel.store import open_store, put_site, record_span
+from ginnel.words import US_PER_S, Channels, Direction, Passage, Sensor, Story
+
+SETTINGS_TEXT = """\
+# The demo's settings: an invented place. `ginnel serve` in this folder shows its log again.
+[site]
+name = "Tannery annex"
+timezone = "Europe/Dublin"
+
+[store]
+url = "sqlite:///ginnel.db"
+
+[[sensor]]
+name = "north-corridor"
+carrier_hz = 10.525e9
+channels = "mono"
+highpass_hz = 8.0
+[sensor.mounting]
+height_m = 2.4
+tilt_deg = 15.0
+[sensor.directions]
+approaching = "to the workshops"
+receding = "to the street"
+[sensor.source]
+path = "captures/north-corridor"
+
+[[sensor]]
+name = "yard-gate"
+carrier_hz = 24.125e9
+channels = "iq"
+[sensor.mounting]
+height_m = 2.2
+offset_m = 0.4
+tilt_deg = 10.0
+[sensor.directions]
+approaching = "in from the yard"
+receding = "out to the yard"
+[sensor.source]
+path = "captures/yard-gate"
+"""
+
+SAMPLE_RATE_HZ = 2000.0
+STARTED_US = 1_772_434_800 * US_PER_S  # Monday 2026-03-02, 07:00 in Dublin
+#: start and length in minutes, walkers an hour, share of them approaching
+HOURS = ((0, 60, 24, 0.8), (60, 48, 60, 0.7), (120, 60, 36, 0.55))
+EDGE_S = 15.0
+CHAIN_WORK = 2.0  # reading a second costs about so many times what making it does; only the bar asks
+
+OnProgress = Callable[[float], None]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Tally:
+    """What really passed a sensor, and what was counted."""
+
+    sensor: Sensor
+    true: dict[Direction, int]
+    counted: dict[Direction, int]
+    listened_s: float
+
+
+def prepare(folder: Path) -> Settings:
+    """Write the demo's settings into a folder, which may hold them already.
+
+    Raises
+    ------
+    ConfigError
+        The folder holds other settings, or cannot be written.
+    """
+    file = folder / "ginnel.toml"
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+        if file.exists() and file.read_text("utf-8") != SETTINGS_TEXT:
+            raise ConfigError(f"{file} is not the demo's: give the demo a folder of its own")
+        file.write_text(SETTINGS_TEXT, "utf-8")
+    except OSError as exc:
+        raise ConfigError(f"{file} cannot be written: {exc.strerror}") from exc
+    return load_settings(file)
+
+
+def work_s(settings: Settings) -> float:
+    """How much `run` has to do, in the unit of its progress."""
+    return len(settings.sensor) * sum(60.0 * minutes for _, minutes, _, _ in HOURS) * (1 + CHAIN_WORK)
+
+
+def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
+    """Make all captures, read them, store what was found, and compare; two processes share the work.
+
+    Raises
+    ------
+    GinnelError
+        Something failed; the message says what.
+    """
+    sensors = {config.name: config.to_sensor() for config in settings.sensor}
+    folders = {config.name: Path(config.source.path) for config in settings.sensor}
+    true: dict[str, list[sim.TrueMover]] = {name: [] for name in sensors}
+    found: dict[str, list[Passage]] = {name: [] for name in sensors}
+    listened_s = dict.fromkeys(sensors, 0.0)
+    spawn = multiprocessing.get_context("spawn")
+    with (
+        ProcessPoolExecutor(2, mp_context=spawn) as pool,
+        open_store(settings.store.url, create=True) as store,
+    ):
+        put_site(store, settings.site.to_site())
+        making = {
+            pool.submit(make_capture, sensors[name], folders[name], hour): (name, 60.0 * HOURS[hour][1])
+            for hour in range(len(HOURS))
+            for name in sensors
+        }
+        for made in as_completed(making):
+            name, cost = making[made]
+            true[name] += made.result()
+            on_progress(cost)
+        spans = [(name, span) for name in sensors for span in recorded_spans(sensors[name], folders[name])]
+        spans.sort(key=lambda one: -one[1].n_samples)
+        reading = {pool.submit(find_passages, sensors[name], span): (name, span) for name, span in spans}
+        for read in as_completed(reading):
+            name, recorded = reading[read]
+            span, passages = recorded.to_span(), read.result()
+            record_span(store, sensors[name], span, passages, CHAIN_VERSION)
+            found[name] += passages
+            listened_s[name] += span.listened_s
+            on_progress(span.listened_s * CHAIN_WORK)
+    return [_tally(sensors[name], true[name], found[name], listened_s[name]) for name in sensors]
+
+
+def make_capture(sensor: Sensor, folder: Path, hour: int) -> list[sim.TrueMover]:
+    """Write the capture of one hour, and its truth beside it; gives the truth."""
+    minute, minutes, per_hour, share_approaching = HOURS[hour]
+    started_us, duration_s = STARTED_US + 60 * minute * US_PER_S, 60.0 * minutes
+    seed = 10 * hour + (sensor.channels is Channels.IQ)
+    walkers = sim.poisson_walkers(
+        duration_s=duration_s,
+        per_hour=per_hour,
+        share_approaching=share_approaching,
+        centre_m=sensor.mounting.offset_m,
+        edge_s=EDGE_S,
+        seed=seed,
+    )
+    scene = sim.Scene(
+        sensor=sensor, duration_s=duration_s, sample_rate_hz=SAMPLE_RATE_HZ, movers=walkers, seed=seed
+    )
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+        stem = sim.capture_name(sensor.name, started_us)
+        sim.write_wav(scene, folder / f"{stem}.wav")
+        sim.write_truth(scene, folder / f"{stem}-truth.csv", started_us)
+    except OSError as exc:
+        raise GinnelError(f"{folder} cannot be written: {exc.strerror or exc}") from exc
+    return scene.truth()
+
+
+def recorded_spans(sensor: Sensor, folder: Path) -> tuple[RecordedSpan, ...]:
+    """Put a sensor's captures together."""
+    return arrange([open_recording(path, sensor) for path in find_captures([folder])]).spans
+
+
+def _tally(
+    sensor: Sensor, true: Sequence[sim.TrueMover], found: Sequence[Passage], listened_s: float
+) -> Tally:
+    passed = [
+        mover.direction for mover in true if mover.story is Story.PASSAGE and mover.crossed_s is not None
+    ]
+    counted = [passage.direction for passage in found if passage.story is Story.PASSAGE]
+    return Tally(
+        sensor=sensor,
+        true={direction: passed.count(direction) for direction in Direction},
+        counted={direction: counted.count(direction) for direction in Direction},
+        listened_s=listened_s,
+    )
