@@ -23,6 +23,7 @@ def poisson_walkers(
     far_m: float = 15.0,
     behind_m: float = 0.5,
     edge_s: float = 0.0,
+    unsteady: float = 0.03,
     seed: int = 0,
 ) -> tuple[Mover, ...]:
     """Walkers whose crossings are a Poisson process, in order of crossing.
@@ -33,6 +34,7 @@ def poisson_walkers(
     per_hour : float, mean number of crossings an hour, both directions together
     speed_mps, power_db : (mean, standard deviation); speeds are kept within 0.4 and 2.5 m/s
     spread_m : float, standard deviation of the lines walked about y = centre_m, kept within three
+    unsteady : float, share by which each one's pace varies slowly; common practice, no source
     edge_s : float, time without crossings at either end of the scene, so that no mover is cut
     """
     rng = np.random.default_rng([seed, 0xA1])
@@ -55,6 +57,7 @@ def poisson_walkers(
             behind_m=behind_m,
             y_m=float(lines[i]),
             stature_m=float(statures[i]),
+            unsteady=unsteady,
             power_db=float(powers[i]),
             seed=int(rng.integers(2**31)),
         )

@@ -6,8 +6,7 @@ floor beneath it, and how strongly each reflects (power, in m^2 for a body of 0 
 
 Walkers follow Boulic, Thalmann and Thalmann, "A global human walking model with real-time kinematic
 personification", The Visual Computer 6 (1990) 344-358. Joint angles: the control points for
-relative speeds 0.5 to 1.3, scaled down below and kept above. Elbows, and the share of each part in
-the echo, are common practice, no source.
+relative speeds 0.5 to 1.3, scaled down below and kept above. Elbows are common practice, no source.
 """
 
 from __future__ import annotations
@@ -154,8 +153,13 @@ class Walker:
         return np.stack(parts) + sway
 
     def powers(self, facing: FloatArray) -> FloatArray:
-        """Torso 1; head and limbs a tenth or so each."""
-        side = [0.05, 0.04, 0.12, 0.08, 0.04]
+        """Torso 1, head 0.1, then upper arm, hand, thigh, shank and foot.
+
+        The shares are tuned on the four recordings of real walkers at 24 GHz, 2026-12-01, so that the power
+        above 1.8 times the torso's frequency is about 1 % (there 0.3 to 1.9 %) and that within 0.8 to 1.25
+        times about 74 % (there 45 to 70 %: real people also change their pace).
+        """
+        side = [0.10, 0.08, 0.35, 0.08, 0.01]
         return np.asarray(np.array([1.0, 0.10, *side, *side])[:, None] * np.ones_like(facing))
 
 

@@ -90,13 +90,33 @@ def constant_speed(
     far_m: float = 15.0,
     behind_m: float = 0.5,
     y_m: float = 0.0,
+    unsteady: float = 0.0,
+    seed: int = 0,
 ) -> Path:
-    """Walk straight through at one speed, between x = far_m and x = -behind_m."""
+    """Walk straight through at one speed, between x = far_m and x = -behind_m.
+
+    ``unsteady`` is the standard deviation of a slow change of pace (over about five seconds), as a share of
+    the speed; its course is drawn from ``seed``.
+    """
     if speed_mps <= 0:
         raise ValueError(f"{speed_mps=} must be positive; the direction says which way")
+    if not 0 <= unsteady <= 0.3:
+        raise ValueError(f"{unsteady=} must be 0 to 0.3 of the speed")
     sign = _sign(direction)
-    x_m = np.array([far_m, -behind_m]) if sign < 0 else np.array([-behind_m, far_m])
-    return Path(times_s=crossed_s + sign * x_m / speed_mps, x_m=x_m, y_m=np.full(2, y_m))
+    if not unsteady:
+        x_m = np.array([far_m, -behind_m]) if sign < 0 else np.array([-behind_m, far_m])
+        return Path(times_s=crossed_s + sign * x_m / speed_mps, x_m=x_m, y_m=np.full(2, y_m))
+    rng = np.random.default_rng([seed, 0x9ACE])
+    before_m, after_m = (far_m, behind_m) if sign < 0 else (behind_m, far_m)
+    from_s, to_s = -1.5 * before_m / speed_mps - 1, 1.5 * after_m / speed_mps + 1  # more than enough
+    times_s = np.arange(from_s, to_s, _KNOT_S)
+    way_m = speed_mps * times_s
+    for rate_hz, start in zip(rng.uniform(0.1, 0.3, size=2), rng.uniform(0, 2 * np.pi, size=2), strict=True):
+        swing_m = unsteady * speed_mps / (2 * np.pi * rate_hz)
+        way_m += swing_m * (np.sin(2 * np.pi * rate_hz * times_s + start) - np.sin(start))
+    x_m = sign * way_m
+    inside = (x_m >= -behind_m) & (x_m <= far_m)
+    return Path(times_s=crossed_s + times_s[inside], x_m=x_m[inside], y_m=np.full(int(inside.sum()), y_m))
 
 
 def _from_speeds(started_s: float, x0_m: float, speeds_mps: FloatArray, y_m: float) -> Path:

@@ -101,10 +101,11 @@ def walker(
     behind_m: float = 0.5,
     y_m: float = 0.0,
     stature_m: float = 1.75,
+    unsteady: float = 0.0,
     power_db: float = 0.0,
     seed: int = 0,
 ) -> Mover:
-    """Make somebody who walks straight through."""
+    """Make somebody who walks straight through; ``unsteady`` as in `motion.constant_speed`."""
     path = constant_speed(
         crossed_s=crossed_s,
         speed_mps=speed_mps,
@@ -112,6 +113,8 @@ def walker(
         far_m=far_m,
         behind_m=behind_m,
         y_m=y_m,
+        unsteady=unsteady,
+        seed=seed,
     )
     return Mover(path=path, body=Walker(stature_m=stature_m), power_db=power_db, seed=seed, name="walker")
 

@@ -29,6 +29,20 @@ def test_constant_speed_crosses_when_told(direction: Direction) -> None:
     assert x_m == pytest.approx([-1.5 * towards, 1.5 * towards] if towards > 0 else [1.5, -1.5])
 
 
+@pytest.mark.parametrize("direction", [Direction.APPROACHING, Direction.RECEDING])
+@pytest.mark.parametrize("seed", range(5))
+def test_an_unsteady_pace_still_crosses_when_told_and_walks_the_whole_path(
+    direction: Direction, seed: int
+) -> None:
+    path = constant_speed(crossed_s=20.0, speed_mps=1.3, direction=direction, unsteady=0.05, seed=seed)
+    assert path.crossings_s() == pytest.approx([20.0], abs=1e-3)
+    ends_m = sorted((path.x_m[0], path.x_m[-1]))
+    assert ends_m == pytest.approx([-0.5, 15.0], abs=0.1)
+    speeds = np.abs(np.diff(path.x_m) / np.diff(path.times_s))
+    assert speeds.mean() == pytest.approx(1.3, rel=0.06)
+    assert 0.01 < speeds.std() / 1.3 < 0.08
+
+
 def test_who_stops_stands_where_told_and_walks_on() -> None:
     path = stop_and_go(started_s=0, speed_mps=1.2, direction=Direction.RECEDING, stop_at_m=5.0, dwell_s=4.0)
     spline = path.spline()
@@ -66,7 +80,7 @@ def test_smoothing_takes_sway_away_and_leaves_the_walk() -> None:
 
 
 def test_arrivals_are_poisson_with_the_published_speeds() -> None:
-    movers = poisson_walkers(duration_s=36_000, per_hour=200, share_approaching=0.7, seed=11)
+    movers = poisson_walkers(duration_s=36_000, per_hour=200, share_approaching=0.7, unsteady=0.0, seed=11)
     n = len(movers)
     assert abs(n - 2000) < 4 * np.sqrt(2000)
     speeds = np.array([abs(np.diff(m.path.x_m) / np.diff(m.path.times_s))[0] for m in movers])
