@@ -24,7 +24,7 @@ def descriptor(store: Store, table: Table, path: str, n_bytes: int, sha256: str)
     return {
         "$schema": _PROFILE,
         "name": table.name,
-        "title": f"{table.title}, {where.name}" if where.name else table.title,
+        "title": f"{table.title}, {where.name}",
         "resources": [
             {
                 "name": table.name,

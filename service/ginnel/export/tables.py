@@ -192,7 +192,7 @@ def counts_table(
     every: Every = Every.HOUR,
 ) -> Table:
     """Tabulate counts by sensor, interval and direction; an interval touched is there as a whole."""
-    zone = reports.period(store, every, 0, 0).zone
+    zone = reports.zone(store)
     rows = reports.iter_counts(store, names, start_us, end_us, every)
     return Table(
         name="counts",
@@ -212,7 +212,7 @@ def speeds_table(
     every: Every = Every.HOUR,
 ) -> Table:
     """Tabulate speeds by sensor, interval and direction, with a column for each speed band of any sensor."""
-    zone = reports.period(store, every, 0, 0).zone
+    zone = reports.zone(store)
     facts = reports.sensor_facts(store, names)
     chosen = [one.sensor for one in facts]
     labels = _band_labels(chosen)

@@ -6,7 +6,7 @@ weeks are cut in the site's time zone. An interval never listened to has no coun
 
 from ginnel.reports.counts import CountRow, CoverageRow, counts, coverage, iter_counts
 from ginnel.reports.facts import SensorFacts, sensor_facts, site
-from ginnel.reports.intervals import Every, Period, cut, period
+from ginnel.reports.intervals import Every, Period, cut, period, zone
 from ginnel.reports.passages import PassageEntry, iter_entries, latest_passages
 from ginnel.reports.speeds import SpeedRow, iter_speeds, speed_histogram, speeds
 
@@ -30,4 +30,5 @@ __all__ = [
     "site",
     "speed_histogram",
     "speeds",
+    "zone",
 ]

@@ -20,8 +20,8 @@ class SensorFacts:
 
 
 def site(store: Store) -> Site:
-    """Get the site; without a name, and in UTC, while nobody has set it."""
-    return log.site(store) or Site(name="")
+    """Get the site; an unnamed one in UTC while nobody has set it."""
+    return log.site(store) or Site(name="Unnamed site")
 
 
 def sensor_facts(store: Store, sensors: Sequence[str] | None = None) -> tuple[SensorFacts, ...]:

@@ -55,6 +55,15 @@ class Period:
         return max(len(self.edges_us) - 1, 0)
 
 
+def zone(store: Store, tz: str | None = None) -> zoneinfo.ZoneInfo:
+    """Get the site's time zone, or one by its IANA name."""
+    name = site(store).timezone if tz is None else tz
+    try:
+        return zoneinfo.ZoneInfo(name)
+    except (zoneinfo.ZoneInfoNotFoundError, ValueError, OSError) as error:
+        raise ConfigError(f"{name!r} is no IANA time zone such as Europe/Dublin") from error
+
+
 def period(
     store: Store,
     every: Every,
@@ -68,19 +77,14 @@ def period(
     An end that is not given is where the log of the sensors begins or ends. Without a log there are
     no intervals.
     """
-    if tz is None:
-        tz = site(store).timezone
-    try:
-        zone = zoneinfo.ZoneInfo(tz)
-    except (zoneinfo.ZoneInfoNotFoundError, ValueError, OSError) as error:
-        raise ConfigError(f"{tz!r} is no IANA time zone such as Europe/Dublin") from error
+    local = zone(store, tz)
     if start_us is None or end_us is None:
         extent = log.extent_us(store, sensors)
         if extent is None:
-            return Period(zone=zone, edges_us=np.empty(0, np.int64))
+            return Period(zone=local, edges_us=np.empty(0, np.int64))
         start_us = extent[0] if start_us is None else start_us
         end_us = extent[1] if end_us is None else end_us
-    return Period(zone=zone, edges_us=cut(start_us, end_us, every, zone))
+    return Period(zone=local, edges_us=cut(start_us, end_us, every, local))
 
 
 def cut(start_us: int, end_us: int, every: Every, zone: tzinfo) -> IntArray:

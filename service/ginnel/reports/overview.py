@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from ginnel import store as log
+from ginnel.reports.facts import site
 from ginnel.store import Store
 from ginnel.words import Sensor, Site
 
@@ -27,7 +28,7 @@ class Overview:
 
 def overview(store: Store) -> Overview:
     """Tell whose log it is; a store without a site is at an unnamed one in UTC."""
-    return Overview(site=log.site(store) or Site(name="Unnamed site"), sensors=tuple(log.sensors(store)))
+    return Overview(site=site(store), sensors=tuple(log.sensors(store)))
 
 
 def extent_us(store: Store, sensor: str | None = None) -> tuple[int, int] | None:

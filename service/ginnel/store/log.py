@@ -105,7 +105,12 @@ def record_span(
             )
         )
         if rows:
-            _refuse_taken_crossings(connection, sensor, sensor_id, rows)
+            # A crossing just outside its span may, hardly ever, hit the microsecond of a neighbour's.
+            for crossed_us in _taken_crossings(connection, sensor_id, rows):
+                raise StoreError(
+                    f"{sensor.name} has a passage crossing at {utc_text(crossed_us)} in a neighbouring span: "
+                    "replay the captures of both together"
+                )
             connection.execute(insert(PassageRow), _values(sensor_id, reading_id, rows))
         return change
 
@@ -147,12 +152,11 @@ def extend_span(
             connection.execute(update(SpanRow).where(SpanRow.id == known.id).values(ended_us=span.ended_us))
         if not rows:
             return SpanChange()
-        before = len(_stored(connection, sensor_id, span))
+        added = len(rows) - len(_taken_crossings(connection, sensor_id, rows))
         dialect = sqlite if store.dialect == "sqlite" else postgresql
         connection.execute(
             dialect.insert(PassageRow).on_conflict_do_nothing(), _values(sensor_id, reading_id, rows)
         )
-        added = len(_stored(connection, sensor_id, span)) - before
         return SpanChange(added=added, kept=len(rows) - added)
 
 
@@ -226,23 +230,16 @@ def _is_row_of(row: Row[Any], span: Span, reading_id: int) -> bool:
     )
 
 
-def _refuse_taken_crossings(
-    connection: Connection, sensor: Sensor, sensor_id: int, rows: Sequence[PassageCodes]
-) -> None:
-    """Refuse a crossing, just outside its span, that hits the very microsecond of a neighbour's."""
+def _taken_crossings(connection: Connection, sensor_id: int, rows: Sequence[PassageCodes]) -> list[int]:
+    """Find crossings of these rows that the log holds already."""
     crossings = {row.crossed_us for row in rows}
-    taken = connection.execute(
+    near = connection.execute(
         select(PassageRow.crossed_us).where(
             PassageRow.sensor_id == sensor_id,
             PassageRow.crossed_us.between(min(crossings), max(crossings)),
         )
     ).scalars()
-    for crossed_us in taken:
-        if crossed_us in crossings:
-            raise StoreError(
-                f"{sensor.name} has a passage crossing at {utc_text(crossed_us)} in a neighbouring span: "
-                "replay the captures of both together"
-            )
+    return sorted(crossings.intersection(near))
 
 
 def _overlap_text(sensor: Sensor, span: Span, old: Row[Any]) -> str:
