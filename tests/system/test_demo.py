@@ -1,0 +1,64 @@
+"""`ginnel demo`, whole: it ends in time, counts nearly as many as passed, and shows them."""
+
+from __future__ import annotations
+
+import re
+import signal
+import subprocess
+import time
+from pathlib import Path
+from urllib.request import urlopen
+
+import pytest
+from tests.system.conftest import command, environment
+
+
+@pytest.mark.slow
+def test_the_demo_counts_what_passed_and_serves_it(tmp_path: Path) -> None:
+    started = time.monotonic()
+    with subprocess.Popen(
+        command("demo", "--dir", str(tmp_path / "demo"), "--port", "0"),
+        cwd=tmp_path,
+        env=environment(),
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+    ) as demo:
+        assert demo.stdout is not None
+        assert demo.stderr is not None
+        lines: list[str] = []
+        for line in demo.stdout:
+            lines.append(line)
+            if "dashboard is at" in line:
+                break
+        took_s = time.monotonic() - started
+        try:
+            text = "".join(lines)
+            address = re.search(r"http://127\.0\.0\.1:\d+/", text)
+            assert address is not None, text + demo.stderr.read()
+            with urlopen(f"{address[0]}?sensor=north-corridor") as answer:
+                page = answer.read().decode()
+        finally:
+            demo.send_signal(signal.SIGINT)
+            demo.wait(20)
+        assert demo.stderr.read() == "", "no progress bar in a pipe"
+    print(text, f"{took_s:.1f} s")  # noqa: T201 (the table that CI shows)
+    assert "Tannery annex" in page
+    totals = re.findall(r"(\S+) +in 2\.8 h listened +(\d+) +(\d+)", text)
+    assert [name for name, _, _ in totals] == ["north-corridor", "yard-gate"]
+    for name, counted, passed in totals:
+        assert int(passed) > 80
+        # 5 % is our own aim for a demo (common practice, no source)
+        assert abs(int(counted) - int(passed)) <= 0.05 * int(passed), name
+    # the promise is 60 s on two cores; a machine busy with other tests gets twice that
+    assert took_s < 120
+
+
+def test_the_demo_does_not_write_over_other_settings(tmp_path: Path) -> None:
+    (tmp_path / "ginnel.toml").write_text("# mine\n", "utf-8")
+    done = subprocess.run(
+        command("demo", "--dir", str(tmp_path), "--no-serve"), capture_output=True, text=True, timeout=60
+    )
+    assert done.returncode == 1
+    assert "give the demo a folder of its own" in done.stderr
+    assert (tmp_path / "ginnel.toml").read_text("utf-8") == "# mine\n"
