@@ -11,7 +11,7 @@ from dataclasses import replace
 import pytest
 
 from ginnel.errors import StoreError
-from ginnel.store import SpanChange, Store, iter_passages, open_store, record_span, spans
+from ginnel.store import SpanChange, Store, iter_passages, open_store, put_sensor, record_span, spans
 from ginnel.words import Direction, Passage, Sensor, Span
 
 S = 1_000_000
@@ -72,7 +72,12 @@ def test_a_writer_killed_before_its_commit_leaves_the_log_as_it_was(store: Store
     assert [one.passage for one in iter_passages(store)] == PASSAGES
 
 
-def test_a_replay_run_twice_at_once_stores_each_passage_once(store: Store, store_url: str) -> None:
+@pytest.mark.parametrize("known", [True, False], ids=["known sensor", "new sensor"])
+def test_a_replay_run_twice_at_once_stores_each_passage_once(
+    store: Store, store_url: str, known: bool
+) -> None:
+    if known:
+        put_sensor(store, NORTH)
     start = threading.Barrier(3)
     changes: list[SpanChange | StoreError] = []
 

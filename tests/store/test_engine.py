@@ -87,6 +87,15 @@ def test_foreign_keys_hold(store: Store) -> None:
         )
 
 
+def test_one_reading_sees_one_state_of_the_log(store: Store) -> None:
+    count = text("SELECT count(*) FROM site")
+    with store.reading() as connection:
+        assert connection.execute(count).scalar() == 0
+        put_site(store, Site(name="x"))
+        assert connection.execute(count).scalar() == 0
+    assert site(store) == Site(name="x")
+
+
 def test_a_failure_half_way_takes_all_back(store: Store) -> None:
     def half_way() -> None:
         with store.writing() as connection:

@@ -7,6 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from sqlalchemy import text
 
 from ginnel.errors import StoreError
 from ginnel.store import (
@@ -162,3 +163,17 @@ def test_memory_does_not_grow_with_the_number_of_passages(store: Store) -> None:
     peak = tracemalloc.get_traced_memory()[1]
     tracemalloc.stop()
     assert peak < 1.5e6  # all of them at once are about 3 MB
+
+
+def test_postgresql_hands_out_rows_piece_by_piece(store: Store) -> None:
+    """Memory that the driver takes for rows is not Python's, so ask the server how it is being read."""
+    if store.dialect != "postgresql":
+        pytest.skip("SQLite has no other way")
+    record_span(store, NORTH, span(0, 100), [passage(10), passage(20)], "1")
+    begun = iter_passages(store)
+    next(begun)
+    with store.reading() as connection:
+        activity = text("SELECT query FROM pg_stat_activity WHERE datname = current_database()")
+        queries = connection.execute(activity).scalars().all()
+    begun.close()
+    assert any(query.startswith("FETCH") for query in queries), queries
