@@ -24,7 +24,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 FloatArray = NDArray[np.floating]
-SampleArray = NDArray[np.float32] | NDArray[np.complex64]
+#: float32 (mono) or complex64 (I/Q).
+SampleArray = NDArray[np.inexact]
 
 US_PER_S = 1_000_000
 

@@ -1,0 +1,118 @@
+"""The measuring chain as one object: blocks of samples in, passages out."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from ginnel.doppler.frontend import CELL_FALSE_ALARM_RATE, FrontEnd, SpectrumBatch
+from ginnel.passages.activity import ActivityStage, Stretch
+from ginnel.passages.cluster import Cluster
+from ginnel.passages.explain import explain
+from ginnel.passages.measure import measure
+from ginnel.passages.site import Site
+from ginnel.passages.stories import Told, tell
+from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor
+
+#: Named by every passage; changes whenever the same samples could give other passages.
+CHAIN_VERSION = "1"
+
+#: Heard this near to the span's end or beginning: the span cut it.
+_CUT_S = 0.5
+_LOW_CONFIDENCE = 0.9
+
+
+class Chain:
+    """One span of one sensor. ``push`` and ``finish`` give passages in order of their crossing.
+
+    The size of the blocks pushed in never changes what comes out.
+    """
+
+    def __init__(self, sensor: Sensor, sample_rate_hz: float, started_us: int) -> None:
+        self._front = FrontEnd(sensor, sample_rate_hz)
+        self._site = Site(sensor, self._front.plan)
+        self._activity = ActivityStage(
+            self._front.plan.frame_rate_hz,
+            CELL_FALSE_ALARM_RATE,
+            int(np.count_nonzero(self._front.watched)),
+        )
+        self._sample_rate_hz = sample_rate_hz
+        self._started_us = started_us
+        self._n_samples = 0
+        self._last_crossed_us = started_us - US_PER_S
+
+    @property
+    def settled_us(self) -> int:
+        """Passages that cross before this have all been given out."""
+        return min(self._time_us(self._activity.settled_frame_idx), self.listened_until_us)
+
+    @property
+    def listened_until_us(self) -> int:
+        """Time after the last sample taken."""
+        return self._started_us + round(self._n_samples * US_PER_S / self._sample_rate_hz)
+
+    def push(self, samples: SampleArray) -> list[Passage]:
+        """Take the next samples of the span, float32 or complex64, any number of them."""
+        self._n_samples += len(samples)
+        return self._passages(self._front.push(samples))
+
+    def finish(self) -> list[Passage]:
+        """End the span."""
+        passages = self._passages(self._front.finish())
+        for stretch in self._activity.finish():
+            passages += self._read(stretch)
+        return passages
+
+    def _passages(self, batches: list[SpectrumBatch]) -> list[Passage]:
+        return [
+            passage
+            for batch in batches
+            for stretch in self._activity.push(batch)
+            for passage in self._read(stretch)
+        ]
+
+    def _read(self, stretch: Stretch) -> list[Passage]:
+        cluster = Cluster(
+            self._site, stretch.first_frame_idx, stretch.power, stretch.background, self._front.watched
+        )
+        told = tell(self._site, explain(cluster))
+        passages = []
+        for one in told:
+            crossed_frame = one.one.mover.crossed_s * self._site.frame_rate_hz
+            if stretch.own_first <= crossed_frame < stretch.own_last:
+                passages.append(self._passage(stretch, one, crossed_frame))
+        return passages
+
+    def _passage(self, stretch: Stretch, told: Told, crossed_frame: float) -> Passage:
+        one = told.one
+        measured = measure(one)
+        started_us = self._time_us(stretch.first_frame_idx + one.first_frame)
+        ended_us = self._time_us(stretch.first_frame_idx + one.last_frame)
+        # Two movers never share a sample: the later one gives way.
+        crossed_us = max(self._time_us(crossed_frame), self._last_crossed_us + 1)
+        self._last_crossed_us = crossed_us
+        flags = set()
+        if stretch.is_clipped[one.first_frame : one.last_frame + 1].any():
+            flags.add(Flag.CLIPPED)
+        if told.overlapping:
+            flags.add(Flag.OVERLAPPING)
+        if measured.direction is Direction.UNKNOWN or (measured.confidence or 0.0) < _LOW_CONFIDENCE:
+            flags.add(Flag.LOW_CONFIDENCE)
+        edge_us = round(_CUT_S * US_PER_S)
+        if started_us < self._started_us + edge_us or ended_us > self.listened_until_us - edge_us:
+            flags.add(Flag.CUT)
+        return Passage(
+            started_us=started_us,
+            crossed_us=crossed_us,
+            ended_us=ended_us,
+            story=told.story,
+            direction=measured.direction,
+            direction_confidence=measured.confidence,
+            speed_mps=measured.speed_mps,
+            speed_se_mps=measured.speed_se_mps,
+            snr_db=one.snr_db,
+            flags=frozenset(flags),
+        )
+
+    def _time_us(self, frame_idx: float) -> int:
+        sample = self._front.frame_centre_samples(frame_idx)
+        return self._started_us + round(float(sample) * US_PER_S / self._sample_rate_hz)

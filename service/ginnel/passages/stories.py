@@ -1,0 +1,153 @@
+"""Which fitted movers are passages: stories told about single movers and pairs of them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from ginnel.passages.explain import Explained
+from ginnel.passages.site import NEPERS_PER_DB, Site
+from ginnel.words import Story
+
+#: A credible path: doors, curtains and hands stay below it.
+_LEAST_PATH_M = 1.5
+_LEAST_VEHICLE_PATH_M = 5.0
+#: A passage is heard at least this near to the sensor, in nearest distances ...
+_NEAR_RATIO = 2.5
+#: ... or wherever the beam still hears well, if it looks past that.
+_WELL_HEARD = -10.0 * NEPERS_PER_DB
+#: Two legs are one person turning if speed and level agree like this and little time lies between.
+_SAME_SPEED, _SAME_LEVEL_DB, _TURN_S = 0.15, 2.5, 5.0
+#: Where a mover turns far from the sensor, both legs end at the same place within this.
+_SAME_PLACE_M = 2.0
+_FAR_TURN_S = 2.5
+#: Slower than this, both ways at once: someone who stands and sways.
+_LOITER_MPS = 0.6
+
+
+@dataclass(frozen=True, slots=True)
+class Told:
+    """A mover and its story."""
+
+    one: Explained
+    story: Story
+    overlapping: bool
+
+
+def tell(site: Site, movers: list[Explained]) -> list[Told]:
+    """Stories of the movers of one stretch, in order of crossing."""
+    bodies = _one_for_each_body(site, movers)
+    stories = {id(one): _single_story(site, one) for one in bodies}
+    for one in bodies:
+        if any(_loiter_together(one, other) for other in bodies):
+            stories[id(one)] = Story.FIDGET
+    passing = [one for one in bodies if stories[id(one)] is Story.PASSAGE]
+    index = 0
+    while index + 1 < len(passing):
+        first, second = passing[index], passing[index + 1]
+        if _turns(site, first, second):
+            stories[id(first)] = stories[id(second)] = Story.TURN_BACK
+            index += 1
+        index += 1
+    return [
+        Told(one, stories[id(one)], any(other is not one and _together(one, other) for other in bodies))
+        for one in bodies
+    ]
+
+
+def _one_for_each_body(site: Site, movers: list[Explained]) -> list[Explained]:
+    """Strongest first; fragments of a body already there are left out or joined to it."""
+    kept: list[Explained] = []
+    for one in sorted(movers, key=lambda mover: -mover.fit.score):
+        if any(_same_body(site, one, other) or _is_leftover(site, one, other) for other in kept):
+            continue
+        kept.append(one)
+    return _joined(sorted(kept, key=lambda one: one.mover.crossed_s))
+
+
+def _same_body(site: Site, weak: Explained, strong: Explained) -> bool:
+    if weak.mover.sign != strong.mover.sign:
+        return False
+    apart_m = abs(weak.mover.crossed_s - strong.mover.crossed_s) * strong.mover.speed_mps
+    return apart_m < site.body.same_within_m
+
+
+def _is_leftover(site: Site, weak: Explained, strong: Explained) -> bool:
+    """A short piece that is only heard while a much stronger mover is."""
+    path_m = weak.far_m - weak.near_m
+    inside = strong.first_frame - 5 <= weak.first_frame and weak.last_frame <= strong.last_frame + 5
+    return inside and path_m < 2 * _least_path_m(site) and weak.fit.score < 0.3 * strong.fit.score
+
+
+def _joined(movers: list[Explained]) -> list[Explained]:
+    """Someone who stops and goes on is one: join two legs of one way that meet."""
+    out: list[Explained] = []
+    for one in movers:
+        earlier = next((other for other in out if _goes_on(other, one)), None)
+        if earlier is None:
+            out.append(one)
+            continue
+        main, part = (one, earlier) if one.near_m < earlier.near_m else (earlier, one)
+        out[out.index(earlier)] = replace(
+            main,
+            first_frame=min(main.first_frame, part.first_frame),
+            last_frame=max(main.last_frame, part.last_frame),
+            far_m=max(main.far_m, part.far_m),
+        )
+    return out
+
+
+def _goes_on(earlier: Explained, later: Explained) -> bool:
+    if earlier.mover.sign != later.mover.sign or earlier.last_frame > later.first_frame:
+        return False
+    if earlier.mover.sign > 0:
+        return abs(earlier.near_m - later.far_m) < _SAME_PLACE_M and earlier.near_m > later.near_m + 1.0
+    return abs(earlier.far_m - later.near_m) < _SAME_PLACE_M and later.far_m > earlier.far_m + 1.0
+
+
+def _single_story(site: Site, one: Explained) -> Story:
+    if one.far_m - one.near_m < _least_path_m(site):
+        return Story.FIDGET
+    if one.near_m > _line_reach_m(site):
+        return Story.TURN_BACK
+    return Story.PASSAGE
+
+
+def _least_path_m(site: Site) -> float:
+    return _LEAST_VEHICLE_PATH_M if site.body.length_m > 1 else _LEAST_PATH_M
+
+
+def _line_reach_m(site: Site) -> float:
+    """How near to the sensor line a passage must have been heard."""
+    x = np.linspace(0.1, 20.0, 200)
+    well_heard = x[site.nominal_level(x) > _WELL_HEARD]
+    nearest_m = float(well_heard.min()) if len(well_heard) else 0.0
+    return max(_NEAR_RATIO * site.offset_m, 1.5 * nearest_m)
+
+
+def _together(one: Explained, other: Explained) -> bool:
+    return one.first_frame <= other.last_frame and other.first_frame <= one.last_frame
+
+
+def _loiter_together(one: Explained, other: Explained) -> bool:
+    slow = max(one.mover.speed_mps, other.mover.speed_mps) < _LOITER_MPS
+    return slow and one.mover.sign != other.mover.sign and _together(one, other)
+
+
+def _turns(site: Site, first: Explained, second: Explained) -> bool:
+    """Whether two successive movers are the two legs of one that turns."""
+    a, b = first.mover, second.mover
+    if a.sign == b.sign or abs(np.log(a.speed_mps / b.speed_mps)) > _SAME_SPEED:
+        return False
+    shared = np.minimum(np.maximum(first.zone_gain, 0), np.maximum(second.zone_gain, 0))
+    if shared.sum() <= 0:
+        return False
+    apart_db = abs(float(shared @ (a.level - b.level) / shared.sum())) / NEPERS_PER_DB
+    if apart_db > _SAME_LEVEL_DB:
+        return False
+    between_s = (second.first_frame - first.last_frame) / site.frame_rate_hz
+    if a.sign > 0:
+        return -0.7 < between_s < _TURN_S
+    meets = abs(first.far_m - second.far_m) < _SAME_PLACE_M
+    return meets and -0.7 < between_s < _FAR_TURN_S
