@@ -67,7 +67,8 @@ class RawFormat:
     @property
     def frame_bytes(self) -> int:
         """Bytes of one sample of all channels."""
-        return int(re.sub(r"\D", "", self.sample_type)) // 8 * int(self.options()["channels"])
+        channels = int(self.options()["channels"])
+        return int("".join(filter(str.isdigit, self.sample_type))) // 8 * channels
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

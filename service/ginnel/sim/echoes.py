@@ -120,7 +120,8 @@ class MoverEcho:
         # The path goes on in a straight line for the few grid points beyond its ends.
         place = place + velocity * (times_s - inside_s)[:, None]
         speed = np.hypot(velocity[:, 0], velocity[:, 1])
-        heading = velocity / np.hypot(speed, _STANDING_MPS)[:, None]
+        fade = -np.expm1(-((speed / _STANDING_MPS) ** 2))
+        heading = velocity * (fade / np.maximum(speed, 1e-9))[:, None]
         plan_m = np.maximum(np.hypot(place[:, 0], place[:, 1]), 1e-6)
         facing = -(heading * place).sum(axis=1) / plan_m
         offsets = mover.body.places_m(self._phase(inside_s), speed)

@@ -247,7 +247,8 @@ def test_a_truncated_flac_is_found_before_anything_is_handed_on(tmp_path: Path, 
     soundfile.write(path, wave(60_000), 8000)
     whole = path.read_bytes()
     path.write_bytes(whole[: int(len(whole) * keep_share)])
-    assert "truncated" in one_line(MONO, path)
+    with pytest.raises(CaptureFormatError, match=r"x\.flac: truncated: the header promises 60000 samples"):
+        open_recording(path, MONO, started_us=0)
 
 
 def test_a_flac_damaged_in_the_middle_is_found_before_anything_is_handed_on(tmp_path: Path) -> None:
@@ -338,8 +339,9 @@ def test_raw_faults_are_named(tmp_path: Path) -> None:
     path.write_bytes(bytes(1001))
     raw = RawFormat(sample_type="ri16_le", sample_rate_hz=8000)
     assert "truncated, or of another type" in one_line(MONO, path, raw)
-    with pytest.raises(CaptureFormatError, match="'ri17_le' is not known"):
-        open_recording(path, MONO, started_us=0, raw=RawFormat(sample_type="ri17_le", sample_rate_hz=8000))
+    for unknown in ("ri17_le", "text", "", "cu32_le", "ri16_xe"):
+        with pytest.raises(CaptureFormatError, match=f"'{unknown}' is not known"):
+            open_recording(path, MONO, started_us=0, raw=RawFormat(sample_type=unknown, sample_rate_hz=8000))
     path.write_bytes(bytes(1000))
     assert "has 1 channel" in one_line(PAIR, path, raw)
     bad = np.ones(100, dtype="<f4")

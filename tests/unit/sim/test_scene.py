@@ -145,6 +145,12 @@ def test_truth_tells_passages_turn_backs_and_fidgeting_apart() -> None:
     assert not any(true.cut for true in truth)
 
 
+def test_who_goes_through_and_comes_back_is_no_passage() -> None:
+    there_and_back = turner(started_s=1.0, from_m=6.0, turn_at_m=-4.0, dwell_s=2.0)
+    (true,) = Scene(sensor=sensor(), duration_s=40, movers=(there_and_back,)).truth()
+    assert (true.story, true.crossed_s) == (Story.TURN_BACK, None)
+
+
 def test_truth_marks_who_is_cut_by_the_scene_and_leaves_out_who_never_comes() -> None:
     scene = Scene(sensor=sensor(), duration_s=20, movers=(walker(crossed_s=3.0), walker(crossed_s=100.0)))
     (true,) = scene.truth()

@@ -20,13 +20,15 @@ CLEAN = Receiver(bits=None)
 
 @dataclass(frozen=True)
 class Point:
-    """One scatterer of 1 m^2, a metre above the floor."""
+    """One scatterer of 1 m^2, a metre above the floor, so far to the left of its path."""
+
+    left_m: float = 0.0
 
     def cycle_rate_hz(self, speed_mps: FloatArray) -> FloatArray:
         return np.zeros_like(speed_mps)
 
     def places_m(self, phase: FloatArray, speed_mps: FloatArray) -> FloatArray:
-        return np.stack([np.zeros_like(phase), np.zeros_like(phase), np.ones_like(phase)], -1)[None]
+        return np.stack([0 * phase, self.left_m + 0 * phase, 1 + 0 * phase], -1)[None]
 
     def powers(self, facing: FloatArray) -> FloatArray:
         return np.ones((1, *facing.shape))
@@ -38,18 +40,19 @@ def point_scene(
     carrier_hz: float = 10.525e9,
     channels: Channels = Channels.IQ,
     y_m: float = 0.0,
+    left_m: float = 0.0,
 ) -> Scene:
     path = constant_speed(
         crossed_s=8.0, speed_mps=speed_mps, direction=direction, far_m=30, behind_m=30, y_m=y_m
     )
-    mover = Mover(path=path, body=Point(), kind=MoverKind.ON_WHEELS, flicker_db=0.0)
+    mover = Mover(path=path, body=Point(left_m=left_m), kind=MoverKind.ON_WHEELS, flicker_db=0.0)
     sensor = Sensor(name="s", carrier_hz=carrier_hz, channels=channels, mounting=LEVEL)
     return Scene(
         sensor=sensor,
         duration_s=16,
         movers=(mover,),
         receiver=CLEAN,
-        beam=Beam(width_deg=(1e4, 1e4)),
+        beam=Beam(width_deg=(1e6, 1e6)),
         peak_snr_db=200.0,
     )
 
@@ -92,6 +95,23 @@ def test_sideways_offset_bends_the_doppler_by_the_cosine() -> None:
     part = samples[at - 200 : at + 200]
     tone_hz = np.angle(part[1:] * part[:-1].conj()).mean() * 8000 / (2 * np.pi)
     assert tone_hz == pytest.approx(94.088 * 0.70711, abs=0.1)
+
+
+@pytest.mark.parametrize("direction", [Direction.APPROACHING, Direction.RECEDING])
+def test_samples_are_those_of_the_plain_formula_in_double_precision(direction: Direction) -> None:
+    # The slow, obvious version: A exp(-j 4 pi R / lambda) / R^2 with R from the place at each sample.
+    speed_mps, y_m, left_m = 3.0, 2.0, 1.0
+    scene = point_scene(speed_mps, direction, 24.125e9, y_m=y_m, left_m=left_m)
+    got = scene.samples()
+    t = np.arange(len(got)) / 8000
+    towards = -1.0 if direction is Direction.APPROACHING else 1.0
+    # Left of somebody who goes towards -x is -y.
+    distance_m = np.hypot(speed_mps * (t - 8.0), y_m + towards * left_m)
+    expected = np.exp(-4j * np.pi * distance_m * 24.125e9 / 299_792_458) / distance_m**2
+    heard = slice(2000, len(got) - 2000)
+    scale = np.abs(got[heard]).max() / np.abs(expected[heard]).max()
+    error = np.abs(got[heard] / (scale * expected[heard]) - 1)
+    assert error.max() < 1e-4
 
 
 def test_mono_is_the_real_part_of_the_pair() -> None:
