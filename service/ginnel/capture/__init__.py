@@ -11,7 +11,6 @@ from ginnel.capture.recordings import (
     Segment,
     find_captures,
     open_recording,
-    open_recordings,
     sample_us,
 )
 from ginnel.capture.sound_files import RawFormat
@@ -29,6 +28,5 @@ __all__ = [
     "arrange",
     "find_captures",
     "open_recording",
-    "open_recordings",
     "sample_us",
 ]

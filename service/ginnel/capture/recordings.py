@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
@@ -153,26 +153,6 @@ def open_recording(
         start_source=start.source,
         source=source,
     )
-
-
-def open_recordings(
-    paths: Iterable[Path],
-    sensor: Sensor,
-    *,
-    raw: RawFormat | None = None,
-    on_checked: Callable[[Path], None] | None = None,
-) -> tuple[list[Recording], list[CaptureError]]:
-    """Open and check many captures; whatever is wrong with one does not stop the others."""
-    good: list[Recording] = []
-    faults: list[CaptureError] = []
-    for path in paths:
-        try:
-            good.append(open_recording(path, sensor, raw=raw).check())
-        except CaptureError as exc:
-            faults.append(exc)
-        if on_checked is not None:
-            on_checked(path)
-    return good, faults
 
 
 def find_captures(paths: Sequence[Path]) -> list[Path]:

@@ -17,6 +17,8 @@ from ginnel.words import US_PER_S, Channels, SampleArray, Sensor
 #: Told after each block: seconds of the scene written since the last call.
 OnProgress = Callable[[float], None]
 
+_PLAIN_WAV_BYTES = 0xFFFF_0000
+
 TRUTH_COLUMNS = (
     "started_at",
     "crossed_at",
@@ -61,7 +63,9 @@ def write_wav(scene: Scene, path: Path, *, on_progress: OnProgress | None = None
     rate_hz = round(scene.sample_rate_hz)
     if rate_hz != scene.sample_rate_hz:
         raise ValueError(f"a WAV file has a whole sample rate, not {scene.sample_rate_hz=}")
-    with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16") as file:
+    # Sizes in a plain WAV file are 32 bits wide; RF64 is the same with 64 (EBU Tech 3306).
+    container = "RF64" if 2 * channels * scene.n_samples > _PLAIN_WAV_BYTES else "WAV"
+    with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16", format=container) as file:
         for block in _told_blocks(scene, on_progress):
             file.write(_columns(block, scene.sensor))
     return path

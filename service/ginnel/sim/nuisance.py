@@ -80,12 +80,14 @@ def _mains_turns(room: Room, wander_hz: float) -> Callable[[FloatArray], FloatAr
     angle = room.rng.uniform(0, 2 * np.pi, size=3)
 
     def turns(times_s: FloatArray) -> FloatArray:
-        total = mains_hz * times_s
+        # So slow a wander is computed at a few knots only: straight between them to some 1e-6 turns.
+        knots_s = np.linspace(times_s[0], times_s[-1], 33)
+        wander = np.zeros(33)
         for rate_hz, start in zip(slow_hz, angle, strict=True):
             # The integral of a sine of size wander_hz * sqrt(2/3).
             swing = wander_hz * np.sqrt(2 / 3) / (2 * np.pi * rate_hz)
-            total = total + swing * np.sin(2 * np.pi * rate_hz * times_s + start)
-        return np.asarray(total)
+            wander += swing * np.sin(2 * np.pi * rate_hz * knots_s + start)
+        return np.asarray(mains_hz * times_s + np.interp(times_s, knots_s, wander))
 
     return turns
 
@@ -224,16 +226,14 @@ class Clutter:
         return push
 
 
-def leaves(level_db: float = 15.0, **changes: float) -> Clutter:
+def leaves(level_db: float = 15.0, *, on_s: tuple[tuple[float, float], ...] | None = None) -> Clutter:
     """Leaves and twigs that the wind stirs: slow, to and fro, in gusts."""
-    return Clutter(level_db=level_db, width_mps=changes.get("width_mps", 0.35), gust_db=5.0, gust_s=6.0)
+    return Clutter(level_db=level_db, width_mps=0.35, gust_db=5.0, gust_s=6.0, on_s=on_s)
 
 
-def rain(level_db: float = 6.0, **changes: float) -> Clutter:
+def rain(level_db: float = 6.0, *, on_s: tuple[tuple[float, float], ...] | None = None) -> Clutter:
     """Rain: falling drops seen at a slant, a broad band of speeds, steadier than leaves."""
-    return Clutter(
-        level_db=level_db, centre_mps=changes.get("centre_mps", 2.5), width_mps=1.5, gust_db=2.0, gust_s=10.0
-    )
+    return Clutter(level_db=level_db, centre_mps=2.5, width_mps=1.5, gust_db=2.0, gust_s=10.0, on_s=on_s)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

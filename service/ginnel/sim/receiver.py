@@ -98,17 +98,17 @@ def highpass_sections(corner_hz: float, sample_rate_hz: float) -> FloatArray:
     return np.asarray(butter(1, corner_hz, "highpass", fs=sample_rate_hz, output="sos"))
 
 
-def streaming(sections: FloatArray | None) -> Callable[[NDArray[Any]], NDArray[Any]]:
+def streaming(sections: FloatArray | None, *, is_iq: bool) -> Callable[[NDArray[Any]], NDArray[Any]]:
     """Return a filter that keeps its state between calls; None passes everything."""
     if sections is None:
         return lambda wave: wave
     from scipy.signal import sosfilt
 
-    state = np.zeros((len(sections), 2), dtype=np.complex128)
+    state = np.zeros((len(sections), 2), dtype=np.complex128 if is_iq else np.float64)
 
     def push(wave: NDArray[Any]) -> NDArray[Any]:
         nonlocal state
         out, state = sosfilt(sections, wave, zi=state)
-        return np.asarray(out if np.iscomplexobj(wave) else out.real)
+        return np.asarray(out)
 
     return push

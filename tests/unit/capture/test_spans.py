@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 import soundfile
 
-from ginnel.capture import Recording, arrange, find_captures, open_recording, open_recordings
+from ginnel.capture import Recording, arrange, find_captures, open_recording
 from ginnel.errors import CaptureError, CaptureFormatError, CaptureTimeError
 from ginnel.words import Sensor
 
@@ -105,20 +105,6 @@ def test_recordings_of_two_sensors_do_not_mix(tmp_path: Path) -> None:
 
 def test_no_recordings_are_no_spans() -> None:
     assert arrange([]).spans == ()
-
-
-def test_one_bad_file_does_not_stop_the_others(tmp_path: Path) -> None:
-    for minute in (10, 11, 12):
-        soundfile.write(tmp_path / f"20260302T08{minute}00Z.wav", np.zeros(8000), 8000)
-    (tmp_path / "20260302T081100Z.wav").write_text("not a sound")
-    (tmp_path / "20260302T081300Z.flac").touch()
-    (tmp_path / "notes.txt").write_text("left alone")
-    seen: list[Path] = []
-    good, faults = open_recordings(find_captures([tmp_path]), NORTH, on_checked=seen.append)
-    assert [r.path.name for r in good] == ["20260302T081000Z.wav", "20260302T081200Z.wav"]
-    assert all(r.is_checked for r in good)
-    assert len(faults) == 2
-    assert len(seen) == 4
 
 
 def test_captures_are_found_once_each(tmp_path: Path) -> None:
