@@ -19,7 +19,7 @@ from ginnel.sim.sensor import Beam, Wall, echo_paths
 from ginnel.words import FloatArray, MoverKind, Sensor
 
 _GRID_HZ = 400.0
-_STANDING_MPS = 0.05  # below this a body's heading fades out
+_STANDING_MPS = 0.15  # slower than this the way does not tell where a body faces
 _FADE_M = 0.1  # over this stretch behind the sensor line a mover vanishes where the path ends there
 _FADE_S = 0.1
 
@@ -54,6 +54,16 @@ def lagrange_weights(n: int) -> FloatArray:
     )
 
 
+def _headings(knots_s: FloatArray, velocity_mps: FloatArray) -> FloatArray:
+    """Where a body faces, rad: along its way, and who stands turns steadily to where the next steps lead."""
+    goes = np.hypot(velocity_mps[:, 0], velocity_mps[:, 1]) > _STANDING_MPS
+    if not goes.any():
+        return np.full(len(knots_s), np.pi)  # towards the sensor
+    ways = np.unwrap(np.arctan2(velocity_mps[goes, 1], velocity_mps[goes, 0]))
+    turns = np.interp(knots_s, knots_s[goes], ways)
+    return np.asarray(np.convolve(np.pad(turns, 2, mode="edge"), np.full(5, 0.2), mode="valid"))
+
+
 class MoverEcho:
     """One mover as heard by one sensor; made when it comes into view, dropped after."""
 
@@ -67,6 +77,7 @@ class MoverEcho:
         knots_s = np.linspace(path.started_s, path.ended_s, n)
         velocity = self._spline(knots_s, 1)
         rates_hz = mover.body.cycle_rate_hz(np.hypot(velocity[:, 0], velocity[:, 1]))
+        self._heading = CubicSpline(knots_s, _headings(knots_s, velocity))
         rng = np.random.default_rng([mover.seed, 0xB0D])
         turns = np.concatenate([[0.0], np.cumsum(0.5 * (rates_hz[1:] + rates_hz[:-1]) * np.diff(knots_s))])
         self._phase = CubicSpline(knots_s, rng.uniform() + turns)
@@ -120,8 +131,8 @@ class MoverEcho:
         # The path goes on in a straight line for the few grid points beyond its ends.
         place = place + velocity * (times_s - inside_s)[:, None]
         speed = np.hypot(velocity[:, 0], velocity[:, 1])
-        fade = -np.expm1(-((speed / _STANDING_MPS) ** 2))
-        heading = velocity * (fade / np.maximum(speed, 1e-9))[:, None]
+        turn = self._heading(inside_s)
+        heading = np.stack([np.cos(turn), np.sin(turn)], axis=-1)
         plan_m = np.maximum(np.hypot(place[:, 0], place[:, 1]), 1e-6)
         facing = -(heading * place).sum(axis=1) / plan_m
         offsets = mover.body.places_m(self._phase(inside_s), speed)

@@ -5,12 +5,12 @@ Doppler figures: the check table for 10.525 and 24.125 GHz, c exact. The range l
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pytest
 
-from ginnel.sim import Beam, Mover, Receiver, Scene, Wall, constant_speed
+from ginnel.sim import Beam, Mover, Receiver, Scene, Wall, constant_speed, stop_and_go
 from ginnel.sim.sensor import beam_gain, echo_paths
 from ginnel.words import Channels, Direction, FloatArray, Mounting, MoverKind, Sensor
 
@@ -112,6 +112,21 @@ def test_samples_are_those_of_the_plain_formula_in_double_precision(direction: D
     scale = np.abs(got[heard]).max() / np.abs(expected[heard]).max()
     error = np.abs(got[heard] / (scale * expected[heard]) - 1)
     assert error.max() < 1e-4
+
+
+def test_who_stops_keeps_facing_the_way_and_every_part_stops() -> None:
+    # A stiff body: no part of it may move faster than its centre while it brakes, or at all while it stands.
+    path = stop_and_go(
+        started_s=0, speed_mps=2.0, direction=Direction.APPROACHING, stop_at_m=6.0, dwell_s=3.0
+    )
+    mover = Mover(path=path, body=Point(left_m=2.0), kind=MoverKind.ON_WHEELS, flicker_db=0.0)
+    scene = replace(point_scene(1.0, Direction.APPROACHING), movers=(mover,), duration_s=9.0)
+    samples = scene.samples().astype(np.complex128)
+    speed_mps = np.angle(samples[1:] * samples[:-1].conj()) * 8000 / (2 * np.pi) / 70.21524
+    heard = speed_mps[1600 : round((path.ended_s - 0.2) * 8000)]
+    assert np.abs(heard).max() < 2.05
+    standing = slice(round(5.5 * 8000), round(7.5 * 8000))
+    assert np.abs(speed_mps[standing]).max() < 0.01
 
 
 def test_mono_is_the_real_part_of_the_pair() -> None:
