@@ -9,7 +9,8 @@ from __future__ import annotations
 from typing import Any
 
 from ginnel import __version__, reports
-from ginnel.export.tables import Column, Table
+from ginnel.export.columns import Column
+from ginnel.export.tables import Table
 from ginnel.reports import SensorFacts
 from ginnel.store import Store
 from ginnel.times import utc_text

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from ginnel import store as log
+from ginnel.errors import StoreError
 from ginnel.store import Store
 from ginnel.words import Mounting, Sensor, Site
 
@@ -25,10 +26,20 @@ def site(store: Store) -> Site:
 
 
 def sensor_facts(store: Store, sensors: Sequence[str] | None = None) -> tuple[SensorFacts, ...]:
-    """Tell of the sensors asked for, or of all, in order of name."""
+    """Tell of the sensors asked for, or of all, in order of name.
+
+    Raises
+    ------
+    StoreError
+        The store does not know one of them.
+    """
+    known = {sensor.name: sensor for sensor in log.sensors(store)}
+    if unknown := sorted(set(sensors or ()) - known.keys()):
+        names = ", ".join(known) or "none yet"
+        raise StoreError(f"the store knows no sensor {unknown[0]!r}; it knows: {names}")
     heard = log.spans(store)
     facts = []
-    for sensor in log.sensors(store):
+    for sensor in known.values():
         if sensors is not None and sensor.name not in sensors:
             continue
         own = [span for span in heard if span.sensor == sensor.name]

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
@@ -13,9 +12,10 @@ from sqlalchemy.dialects import postgresql, sqlite
 from ginnel.errors import StoreError
 from ginnel.store.codes import PassageCodes, encode
 from ginnel.store.engine import Store
-from ginnel.store.tables import MountingRow, PassageRow, ReadingRow, SensorRow, SiteRow, SpanRow
+from ginnel.store.readings import mounting_row_id, reading_row_id, sensor_row_id
+from ginnel.store.tables import PassageRow, SiteRow, SpanRow
 from ginnel.times import utc_text
-from ginnel.words import US_PER_S, Mounting, Passage, Sensor, Site, Span
+from ginnel.words import US_PER_S, Passage, Sensor, Site, Span
 
 #: A crossing may lie this far outside the time in which its mover was heard, and no further.
 CROSSING_MARGIN_US = 600 * US_PER_S
@@ -50,7 +50,7 @@ def put_site(store: Store, site: Site) -> None:
 def put_sensor(store: Store, sensor: Sensor) -> None:
     """Set a sensor's settings and make its mounting known."""
     with store.writing() as connection:
-        _mounting_id(connection, _sensor_id(connection, sensor), sensor.mounting)
+        mounting_row_id(connection, sensor_row_id(connection, sensor), sensor.mounting)
 
 
 def record_span(
@@ -73,8 +73,8 @@ def record_span(
     """
     rows = _rows_of(sensor, span, passages)
     with store.writing() as connection:
-        sensor_id = _sensor_id(connection, sensor)
-        reading_id = _reading_id(connection, sensor_id, sensor, chain_version)
+        sensor_id = sensor_row_id(connection, sensor)
+        reading_id = reading_row_id(connection, sensor_id, sensor, chain_version)
         overlapping = _overlapping(connection, sensor_id, span)
         for old in overlapping:
             longer = old.started_us <= span.started_us and span.ended_us <= old.ended_us
@@ -130,8 +130,8 @@ def extend_span(
     """
     rows = _rows_of(sensor, span, passages)
     with store.writing() as connection:
-        sensor_id = _sensor_id(connection, sensor)
-        reading_id = _reading_id(connection, sensor_id, sensor, chain_version)
+        sensor_id = sensor_row_id(connection, sensor)
+        reading_id = reading_row_id(connection, sensor_id, sensor, chain_version)
         known = None
         for old in _overlapping(connection, sensor_id, span):
             if old.started_us != span.started_us or old.reading_id != reading_id:
@@ -248,79 +248,3 @@ def _overlap_text(sensor: Sensor, span: Span, old: Row[Any]) -> str:
         f"is stored, {utc_text(old.started_us)} to {utc_text(old.ended_us)}: "
         "replay all captures of that time together"
     )
-
-
-def _sensor_id(connection: Connection, sensor: Sensor) -> int:
-    """Id of a sensor, made or brought up to date. Locks it, so that writers of one sensor take turns."""
-    values = {
-        "carrier_hz": sensor.carrier_hz,
-        "channels": sensor.channels.value,
-        "swap_iq": sensor.swap_iq,
-        "mains_hz": sensor.mains_hz,
-        "speed_bands_mps": json.dumps(list(sensor.speed_bands_mps)),
-        "min_speed_mps": sensor.min_speed_mps,
-        "max_speed_mps": sensor.max_speed_mps,
-        "highpass_hz": sensor.highpass_hz,
-        "approaching_name": sensor.approaching_name,
-        "receding_name": sensor.receding_name,
-    }
-    query = select(*SensorRow.__table__.columns).where(SensorRow.name == sensor.name).with_for_update()
-    row = connection.execute(query).one_or_none()
-    if row is None:
-        dialect = sqlite if connection.dialect.name == "sqlite" else postgresql
-        connection.execute(
-            dialect.insert(SensorRow).values(name=sensor.name, **values).on_conflict_do_nothing()
-        )
-        row = connection.execute(query).one()
-    if any(row._mapping[name] != value for name, value in values.items()):
-        connection.execute(update(SensorRow).where(SensorRow.id == row.id).values(values))
-    return int(row.id)
-
-
-def _mounting_id(connection: Connection, sensor_id: int, mounting: Mounting) -> int:
-    width = mounting.beam_width_deg or (None, None)
-    values = {
-        "sensor_id": sensor_id,
-        "aspect": mounting.aspect.value,
-        "height_m": mounting.height_m,
-        "offset_m": mounting.offset_m,
-        "beam_angle_deg": mounting.beam_angle_deg,
-        "tilt_deg": mounting.tilt_deg,
-        "beam_width_h_deg": width[0],
-        "beam_width_v_deg": width[1],
-        "since_us": mounting.since_us,
-    }
-    return _found_or_made(connection, MountingRow, values)
-
-
-def _reading_id(connection: Connection, sensor_id: int, sensor: Sensor, chain_version: str) -> int:
-    settings = {
-        "carrier_hz": sensor.carrier_hz,
-        "channels": sensor.channels.value,
-        "highpass_hz": sensor.highpass_hz,
-        "mains_hz": sensor.mains_hz,
-        "max_speed_mps": sensor.max_speed_mps,
-        "min_speed_mps": sensor.min_speed_mps,
-        "swap_iq": sensor.swap_iq,
-    }
-    values = {
-        "sensor_id": sensor_id,
-        "mounting_id": _mounting_id(connection, sensor_id, sensor.mounting),
-        "chain_version": chain_version,
-        "settings": json.dumps(settings),
-    }
-    return _found_or_made(connection, ReadingRow, values)
-
-
-def _found_or_made(
-    connection: Connection, table: type[MountingRow] | type[ReadingRow], values: dict[str, Any]
-) -> int:
-    """Id of the row with these values. The sensor's lock keeps two writers from making it twice."""
-    same = [
-        getattr(table, name).is_(None) if value is None else getattr(table, name) == value
-        for name, value in values.items()
-    ]
-    found = connection.execute(select(table.id).where(*same).order_by(table.id).limit(1)).scalar()
-    if found is None:
-        found = connection.execute(insert(table).values(values).returning(table.id)).scalar_one()
-    return int(found)

@@ -9,6 +9,7 @@ from dataclasses import replace
 
 import pytest
 
+from ginnel.errors import StoreError
 from ginnel.export import export_counts, export_passages, export_speeds
 from ginnel.export.tables import number_text, safe_text
 from ginnel.reports import Every
@@ -180,6 +181,14 @@ def test_period_and_sensor_can_be_chosen(filled: Store) -> None:
     assert [row["sensor"] for row in csv.DictReader(io.StringIO(text))] == ["south"]
     text = text_of(export_passages, filled, None, NINE + 5 * S, NINE + HOUR)
     assert [row["direction"] for row in csv.DictReader(io.StringIO(text))] == ["unknown"]
+
+
+def test_an_unknown_sensor_is_refused_before_anything_is_written(filled: Store) -> None:
+    for export in (export_passages, export_counts, export_speeds):
+        stream = io.StringIO()
+        with pytest.raises(StoreError, match="no sensor 'west'; it knows: north"):
+            export(filled, stream, ["west"])
+        assert stream.getvalue() == ""
 
 
 def test_no_text_is_taken_for_a_formula(store: Store) -> None:
