@@ -62,7 +62,7 @@ path = "captures/yard-gate"
 SAMPLE_RATE_HZ = 2000.0
 STARTED_US = 1_772_434_800 * US_PER_S  # Monday 2026-03-02, 07:00 in Dublin
 #: start and length in minutes, walkers an hour, share of them approaching
-HOURS = ((0, 60, 24, 0.8), (60, 48, 60, 0.7), (120, 60, 36, 0.55))
+HOURS = ((0, 60, 10, 0.8), (60, 48, 28, 0.7), (120, 60, 16, 0.55))
 EDGE_S = 15.0
 CHAIN_WORK = 2.0  # reading a second costs about so many times what making it does; only the bar asks
 
