@@ -174,7 +174,12 @@ def _read_metadata(path: Path) -> dict[str, Any]:
         raise CaptureFormatError(f"{path}: is no SigMF metadata ({_first_line(exc)})") from exc
     except ValidationError as exc:
         raise CaptureFormatError(f"{path}: is no valid SigMF metadata ({exc.message})") from exc
-    return dict(metadata)
+    # As the package understood it, which is what was found valid: it fills in what is missing.
+    return {
+        "global": dict(described.get_global_info()),
+        "captures": list(described.get_captures()),
+        "annotations": list(described.get_annotations()),
+    }
 
 
 def _first_line(exc: Exception) -> str:
