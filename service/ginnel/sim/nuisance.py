@@ -137,7 +137,8 @@ class Lamps:
         """Start playing."""
         take, turns = _clock(room), _mains_turns(room, self.wander_hz)
         starts = room.rng.uniform(size=self.harmonics)
-        towards = np.exp(1j * room.rng.uniform(-np.pi / 4, np.pi / 4))
+        phase_rad = room.rng.uniform(-np.pi / 4, np.pi / 4)
+        towards = 1 + 1j * np.tan(phase_rad)  # of that phase, and at its level in I
 
         def push(n: int) -> ComplexArray:
             times_s = take(n)
@@ -220,7 +221,7 @@ class Clutter:
             waves = [np.sin(2 * np.pi * hz * times_s + at) for hz, at in zip(gust_hz, starts, strict=True)]
             gust = 10 ** (self.gust_db / np.sqrt(2) * np.sum(waves, axis=0) / 20)
             turn = 2 * np.pi * self.centre_mps * per_mps * times_s
-            shift = np.sqrt(2) * np.cos(turn) if self.two_sided and self.centre_mps else np.exp(1j * turn)
+            shift = 2 * np.cos(turn) if self.two_sided and self.centre_mps else np.exp(1j * turn)
             return np.asarray(size * gust * narrow * shift * _is_on(times_s, self.on_s))
 
         return push

@@ -3,8 +3,8 @@
 How strong things are
 ---------------------
 ``peak_snr_db`` is what a reference walker gives: a 1 m^2 torso at `BODY_CENTRE_M` on the middle of the
-path (y = the mounting's ``offset_m``). Its power where it is strongest, over the white noise's, in the
-peak bin of a 100 ms Hann frame in which it stood still in frequency:
+path (y = the mounting's ``offset_m``). It is its power where that is greatest (not nearer than 1 m) over the
+white noise's, in the peak bin of a 100 ms Hann frame in which it stood still in frequency:
 
     mono A^2 n / (6 s^2),    I/Q A^2 n / (3 s^2),
 
@@ -33,6 +33,7 @@ from ginnel.sim.receiver import Receiver, flicker_sections, highpass_sections, s
 from ginnel.sim.sensor import Beam, Wall, echo_paths
 from ginnel.words import Channels, SampleArray, Sensor
 
+_REFERENCE_NEAREST_M = 1.0  # where somebody would walk into the sensor, the peak means nothing
 _CHUNK_CELLS = 512  # coarse grid points rendered at once, a little over a second
 
 
@@ -79,7 +80,8 @@ class Scene:
         places = np.stack(
             [x_m, np.full_like(x_m, mounting.offset_m), np.full_like(x_m, BODY_CENTRE_M)], axis=-1
         )
-        _, levels = echo_paths(places[None], np.ones((1, len(x_m))), mounting, self.beam, ())
+        ranges_m, levels = echo_paths(places[None], np.ones((1, len(x_m))), mounting, self.beam, ())
+        levels = levels[ranges_m >= _REFERENCE_NEAREST_M]
         return Hearing(
             sensor=self.sensor,
             beam=self.beam,

@@ -47,6 +47,34 @@ def test_lamps_stand_at_twice_mains_frequency_and_are_symmetric_in_iq() -> None:
     assert ratio[5] < 3.0
 
 
+@pytest.mark.parametrize("channels", list(Channels))
+def test_lamps_and_hum_have_their_level_in_one_channel(channels: Channels) -> None:
+    # In I/Q a real line shares its power between +f and -f, and the noise doubles: the channel I tells.
+    sensor = Sensor(name="s", channels=channels)
+    for nuisance, line_hz in (
+        (Lamps(level_db=28.0, wander_hz=0.0), 100),
+        (Hum(level_db=28.0, wander_hz=0.0), 50),
+    ):
+        scene = Scene(
+            sensor=sensor, duration_s=20, nuisances=(nuisance,), receiver=Receiver(bits=None), seed=line_hz
+        )
+        window = np.hanning(801)[:-1]
+        frames = scene.samples().real.reshape(-1, 800)
+        power = (np.abs(np.fft.rfft(frames * window)) ** 2).mean(axis=0)
+        noise = scene.noise_rms**2 * (window**2).sum()
+        assert 10 * np.log10(power[line_hz // 10] / noise) == pytest.approx(28.0, abs=0.3)
+
+
+@pytest.mark.parametrize("centre_mps", [0.0, 2.5])
+@pytest.mark.parametrize("channels", list(Channels))
+def test_clutter_has_its_density_over_the_noise(channels: Channels, centre_mps: float) -> None:
+    steady = Clutter(level_db=20.0, centre_mps=centre_mps, width_mps=1.0, gust_db=0.0)
+    ratio = powers(steady, channels=channels)
+    # 2.5 m/s are 175.5 Hz at 10.525 GHz.
+    band = ratio[17:19] if centre_mps else ratio[1:3]
+    assert 10 * np.log10(band.mean()) == pytest.approx(20.0, abs=1.0)
+
+
 def test_lamps_can_be_switched() -> None:
     sensor = Sensor(name="s")
     scene = Scene(sensor=sensor, duration_s=4, nuisances=(Lamps(level_db=50.0, on_s=((2.0, 3.0),)),))

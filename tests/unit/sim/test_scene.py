@@ -67,6 +67,13 @@ def test_the_reference_walker_peaks_at_the_stated_level() -> None:
     assert np.abs(scene.samples()).max() == pytest.approx(0.05, rel=0.3)
 
 
+def test_a_sensor_at_body_height_still_hears_a_walker_from_afar() -> None:
+    # By the range law alone: 1 m^2 at 10 m is 40 dB below the peak, which is taken at 1 m.
+    low = Sensor(name="s", mounting=Mounting(height_m=1.0))
+    hearing = Scene(sensor=low, duration_s=1, beam=Beam(floor_db=-200.0)).hearing()
+    assert hearing.scale / 10.0**2 == pytest.approx(0.05 * 1e-2, rel=0.05)
+
+
 def test_power_of_a_mover_is_in_db() -> None:
     def peak(power_db: float) -> float:
         scene = Scene(
