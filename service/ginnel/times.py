@@ -22,4 +22,5 @@ def from_us(moment_us: int, zone: tzinfo = UTC) -> datetime:
 
 def utc_text(moment_us: int) -> str:
     """RFC 3339 in UTC with all six digits: ``2026-03-02T09:15:04.250000Z``."""
-    return from_us(moment_us).isoformat(timespec="microseconds").replace("+00:00", "Z")
+    text = (_EPOCH + timedelta(microseconds=moment_us)).isoformat(timespec="microseconds")
+    return text.removesuffix("+00:00") + "Z"

@@ -118,7 +118,7 @@ def _band_labels(chosen: Sequence[Sensor]) -> list[str]:
 
 def _passage_cells(entry: PassageEntry) -> list[str]:
     passage = entry.passage
-    flags = [flag.value for flag in Flag if flag in passage.flags]
+    flags = [flag.value for flag in Flag if flag in passage.flags] if passage.flags else []
     if passage.story is not Story.PASSAGE:
         flags.insert(0, passage.story.value)
     return [
