@@ -29,6 +29,8 @@ _N_REFINED = 4
 _N_ROUNDS = 2
 #: A mover owns the cells within this many line widths, or this share of its frequency.
 _OWN_WIDTHS, _OWN_SHARE = 2.5, 0.12
+#: Two pieces of one line meet within this time and this relative difference of speed.
+_JOINT_S, _JOINT_SPEED = 1.5, 0.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,6 +51,7 @@ class Explained:
     lost_far: float
     snr_db: float
     zone_gain: FloatArray
+    own: NDArray[np.bool_]
 
     @property
     def mover(self) -> Mover:
@@ -68,14 +71,75 @@ def explain(cluster: Cluster) -> list[Explained]:
                 ((score, mover) for score, mover in scored if score > 5.0), key=lambda pair: -pair[0]
             )
             best = _best_fit(cluster, [mover for _, mover in scored[:_N_REFINED]])
+            if best is not None:
+                best = _slide(cluster, best[0]), best[1]
             if best is None or best[0].score < _score_needed(found, best[0]):
                 break
             fit, start = best
-            found.append(_settle(cluster, fit))
+            found.append(_settle(cluster, _polished(cluster, fit)))
             starts = [mover for _, mover in scored if mover is not start]
         if len(found) == n_before:
             break
-    return sorted(found, key=lambda one: one.mover.crossed_s)
+    return sorted(_reunite(cluster, found), key=lambda one: one.mover.crossed_s)
+
+
+def _reunite(cluster: Cluster, found: list[Explained]) -> list[Explained]:
+    """Give straight pieces of line without a bend back to the mover whose line they continue.
+
+    A driver who brakes or speeds up leaves the line of constant speed, and the far part may have
+    been found first, with a crossing that nobody made.
+    """
+    site = cluster.site
+    bend_m = site.body.bend_ratio * site.offset_m
+    whole = [one for one in found if one.near_m <= bend_m]
+    for piece in sorted((one for one in found if one.near_m > bend_m), key=lambda one: -one.fit.score):
+        partner = min(
+            (one for one in whole if _continues(site.frame_rate_hz, site.is_iq, one, piece)),
+            key=lambda one: abs(one.mover.crossed_s - piece.mover.crossed_s),
+            default=None,
+        )
+        joined = None if partner is None else _refit_both(cluster, partner, piece)
+        if partner is None or joined is None:
+            whole.append(piece)
+        else:
+            whole[whole.index(partner)] = joined
+    return whole
+
+
+def _continues(frame_rate_hz: float, is_iq: bool, one: Explained, piece: Explained) -> bool:
+    """Whether a piece begins where a mover's line ends, far from the sensor, at its speed.
+
+    A straight line in one channel has no direction of its own.
+    """
+    if is_iq and one.mover.sign != piece.mover.sign:
+        return False
+    if one.mover.sign < 0:
+        apart_s = (piece.first_frame - one.last_frame) / frame_rate_hz
+        goes_further = piece.last_frame > one.last_frame
+    else:
+        apart_s = (one.first_frame - piece.last_frame) / frame_rate_hz
+        goes_further = piece.first_frame < one.first_frame
+    speeds = [_mean_speed_mps(one), _mean_speed_mps(piece)]
+    return goes_further and apart_s < _JOINT_S and abs(np.log(speeds[0] / speeds[1])) < _JOINT_SPEED
+
+
+def _mean_speed_mps(one: Explained) -> float:
+    weight = np.maximum(one.zone_gain, 0.0)
+    return one.mover.speed_mps * (1.0 + float(weight @ one.mover.drift) / max(float(weight.sum()), 1e-9))
+
+
+def _refit_both(cluster: Cluster, one: Explained, piece: Explained) -> Explained | None:
+    """One mover for the cells of two, if it is worth more than the better of them."""
+    cluster.free |= one.own | piece.own
+    starts = [
+        replace(one.mover, speed_mps=_mean_speed_mps(which), drift=np.zeros_like(one.mover.drift))
+        for which in (piece, one)
+    ]
+    best = _best_fit(cluster, [*starts, one.mover])
+    if best is None or best[0].score < max(one.fit.score, piece.fit.score):
+        cluster.free &= ~(one.own | piece.own)
+        return None
+    return _settle(cluster, _polished(cluster, best[0]))
 
 
 def _best_fit(cluster: Cluster, starts: list[Mover]) -> tuple[Fit, Mover] | None:
@@ -85,6 +149,31 @@ def _best_fit(cluster: Cluster, starts: list[Mover]) -> tuple[Fit, Mover] | None
         if fit is not None and (best is None or fit.score > best[0].score):
             best = fit, start
     return best
+
+
+def _slide(cluster: Cluster, fit: Fit) -> Fit:
+    """Try crossings further along the straight line, where the bend that belongs to it may lie.
+
+    Far from the sensor a line is straight and fits a crossing nearly anywhere.
+    """
+    offset_s = cluster.site.offset_m / fit.mover.speed_mps
+    for n_offsets in (1.0, 2.0, 4.0):
+        crossed_s = fit.mover.crossed_s + fit.mover.sign * n_offsets * offset_s
+        start = replace(
+            fit.mover,
+            crossed_s=crossed_s,
+            offset_m=cluster.site.offset_m,
+            drift=np.zeros_like(fit.mover.drift),
+        )
+        slid = refine(cluster, start)
+        if slid is not None and slid.score > fit.score:
+            return _slide(cluster, slid)
+    return fit
+
+
+def _polished(cluster: Cluster, fit: Fit) -> Fit:
+    better = refine(cluster, fit.mover, n_outer=2, n_inner=8)
+    return better if better is not None and better.score >= fit.score else fit
 
 
 def _score_needed(found: list[Explained], fit: Fit) -> float:
@@ -105,7 +194,7 @@ def _settle(cluster: Cluster, fit: Fit) -> Explained:
             if swapped is not None and swapped.score > fit.score:
                 fit, rival_score = swapped, fit.score
                 own = _own_cells(cluster, fit.mover)
-    explained = _heard(cluster, fit, rival_score)
+    explained = _heard(cluster, fit, rival_score, own)
     cluster.free &= ~own
     return explained
 
@@ -147,7 +236,7 @@ def _rival(cluster: Cluster, fit: Fit, own: NDArray[np.bool_]) -> Fit | None:
         cluster.whitened = whitened
 
 
-def _heard(cluster: Cluster, fit: Fit, rival_score: float) -> Explained:
+def _heard(cluster: Cluster, fit: Fit, rival_score: float, own: NDArray[np.bool_]) -> Explained:
     cells = gather(cluster, fit.mover)
     assert cells is not None  # noqa: S101 - a fit has cells
     evidence: Evidence = weigh(cluster, cells)
@@ -166,6 +255,7 @@ def _heard(cluster: Cluster, fit: Fit, rival_score: float) -> Explained:
         lost_far=lost_far,
         snr_db=float(10 * np.log10(max(evidence.power.max(), 1e-3))),
         zone_gain=cells.line.zones @ evidence.gain,
+        own=own,
     )
 
 

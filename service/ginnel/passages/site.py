@@ -20,6 +20,8 @@ NEPERS_PER_DB = np.log(10.0) / 10.0
 #: Zones along the path end at these multiples of the nearest distance.
 _ZONE_RATIOS = (1.0, 2.0, 4.5, 10.0, 25.0)
 N_ZONES = len(_ZONE_RATIOS)
+#: Squared cosine between path and line of sight there: how well a zone shows the speed.
+ZONE_COSINE2 = 1.0 - 1.0 / np.array(_ZONE_RATIOS) ** 2
 #: Half-power beam widths of a small patch module, degrees; common practice, no source.
 _USUAL_BEAM_DEG = (80.0, 40.0)
 #: Side and back lobes of such a module, one way; common practice, no source.
@@ -36,6 +38,8 @@ class Body:
     gait_ratio: float  # rms wobble of the torso's speed, as a share of it
     reach_m: float  # how far along the path it may be heard
     same_within_m: float  # crossings closer than this belong to one body
+    longest_m: float  # no body is longer
+    bend_ratio: float  # a passage is heard this near to the sensor, in nearest distances
     # Prior spreads, weighed against evidence that model errors limit (see ``fit.SATURATION``):
     zone_level_sd: float  # log power in one zone against the nominal curve
     level_slope_sd: float  # its slope with log distance; nominally R^-4
@@ -50,6 +54,8 @@ WALKER = Body(
     gait_ratio=0.12,
     reach_m=25.0,
     same_within_m=0.7,
+    longest_m=1.0,
+    bend_ratio=1.5,
     zone_level_sd=1.5 * NEPERS_PER_DB,
     level_slope_sd=0.3,
     drift_sd=0.03,
@@ -61,12 +67,14 @@ VEHICLE = Body(
     length_m=3.0,
     gait_ratio=0.01,
     reach_m=150.0,
-    same_within_m=10.0,
+    same_within_m=12.0,
+    longest_m=18.75,  # the longest road train, Council Directive 96/53/EC, from memory
+    bend_ratio=0.4,
     zone_level_sd=4.0 * NEPERS_PER_DB,
     level_slope_sd=0.8,
-    drift_sd=0.08,
+    drift_sd=0.04,
     drift_step_sd=0.06,
-    offset_log_sd=0.25,
+    offset_log_sd=0.12,
 )
 
 

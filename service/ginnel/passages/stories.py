@@ -13,15 +13,15 @@ from ginnel.words import Story
 #: A credible path: doors, curtains and hands stay below it.
 _LEAST_PATH_M = 1.5
 _LEAST_VEHICLE_PATH_M = 5.0
-#: A passage is heard at least this near to the sensor, in nearest distances ...
-_NEAR_RATIO = 2.5
-#: ... or wherever the beam still hears well, if it looks past that.
+#: Where the beam still hears well, for mountings that look past the sensor line.
 _WELL_HEARD = -10.0 * NEPERS_PER_DB
 #: Two legs are one person turning if speed and level agree like this and little time lies between.
 _SAME_SPEED, _SAME_LEVEL_DB, _TURN_S = 0.15, 2.5, 5.0
 #: Where a mover turns far from the sensor, both legs end at the same place within this.
 _SAME_PLACE_M = 2.0
 _FAR_TURN_S = 2.5
+#: A bend this strong, against the body's strongest, is an end of it and no mere leftover.
+_STRONG_PART = 0.2
 #: Slower than this, both ways at once: someone who stands and sways.
 _LOITER_MPS = 0.6
 
@@ -57,20 +57,52 @@ def tell(site: Site, movers: list[Explained]) -> list[Told]:
 
 
 def _one_for_each_body(site: Site, movers: list[Explained]) -> list[Explained]:
-    """Strongest first; fragments of a body already there are left out or joined to it."""
+    """Further bends of a body are merged with its strongest, and leftovers of others left out."""
+    merged = [_merged(site, body) for body in _bodies(site, movers)]
     kept: list[Explained] = []
-    for one in sorted(movers, key=lambda mover: -mover.fit.score):
-        if any(_same_body(site, one, other) or _is_leftover(site, one, other) for other in kept):
-            continue
-        kept.append(one)
+    for one in sorted(merged, key=lambda body: -body.fit.score):
+        if not any(_is_leftover(site, one, other) for other in kept):
+            kept.append(one)
     return _joined(sorted(kept, key=lambda one: one.mover.crossed_s))
 
 
-def _same_body(site: Site, weak: Explained, strong: Explained) -> bool:
-    if weak.mover.sign != strong.mover.sign:
-        return False
-    apart_m = abs(weak.mover.crossed_s - strong.mover.crossed_s) * strong.mover.speed_mps
-    return apart_m < site.body.same_within_m
+def _bodies(site: Site, movers: list[Explained]) -> list[list[Explained]]:
+    """Movers of one way whose crossings follow each other as the parts of one body do."""
+    bodies: list[list[Explained]] = []
+    for one in sorted(movers, key=lambda mover: (mover.mover.sign, mover.mover.crossed_s)):
+        body = bodies[-1] if bodies and bodies[-1][0].mover.sign == one.mover.sign else None
+        if body is not None and _is_part(site, one, body):
+            body.append(one)
+        else:
+            bodies.append([one])
+    return bodies
+
+
+def _is_part(site: Site, one: Explained, body: list[Explained]) -> bool:
+    strongest = max([one, *body], key=lambda part: part.fit.score)
+    speed_mps = strongest.mover.speed_mps
+    behind_last_m = (one.mover.crossed_s - body[-1].mover.crossed_s) * speed_mps
+    behind_first_m = (one.mover.crossed_s - body[0].mover.crossed_s) * speed_mps
+    return behind_last_m < site.body.same_within_m and behind_first_m < site.body.longest_m
+
+
+def _merged(site: Site, body: list[Explained]) -> Explained:
+    """The strongest part of a body; it crosses midway between its first and its last strong bend."""
+    main = max(body, key=lambda part: part.fit.score)
+    bends = [
+        one.mover.crossed_s
+        for one in body
+        if one.fit.score > _STRONG_PART * main.fit.score
+        and one.near_m <= site.body.bend_ratio * site.offset_m
+    ]
+    crossed_s = (min(bends) + max(bends)) / 2 if bends else main.mover.crossed_s
+    mover = replace(main.mover, crossed_s=crossed_s)
+    return replace(
+        main,
+        fit=replace(main.fit, mover=mover),
+        first_frame=min(one.first_frame for one in body),
+        last_frame=max(one.last_frame for one in body),
+    )
 
 
 def _is_leftover(site: Site, weak: Explained, strong: Explained) -> bool:
@@ -123,7 +155,7 @@ def _line_reach_m(site: Site) -> float:
     x = np.linspace(0.1, 20.0, 200)
     well_heard = x[site.nominal_level(x) > _WELL_HEARD]
     nearest_m = float(well_heard.min()) if len(well_heard) else 0.0
-    return max(_NEAR_RATIO * site.offset_m, 1.5 * nearest_m)
+    return max(site.body.bend_ratio * site.offset_m, 1.5 * nearest_m)
 
 
 def _together(one: Explained, other: Explained) -> bool:
