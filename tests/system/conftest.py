@@ -55,12 +55,12 @@ def ginnel(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Ginnel:
     return run
 
 
-def write_minute(folder: Path, minute: int, *, seed: int = 0) -> Path:
-    """Write the capture of one minute: somebody approaches at 20 s, somebody leaves at 40 s."""
+def write_minute(folder: Path, minute: int, *, seed: int = 0, duration_s: float = 60.0) -> Path:
+    """Write the capture of one minute or less: somebody approaches at 20 s, somebody leaves at 40 s."""
     folder.mkdir(exist_ok=True)
     scene = sim.Scene(
         sensor=SENSOR,
-        duration_s=60.0,
+        duration_s=duration_s,
         sample_rate_hz=RATE_HZ,
         movers=(
             sim.walker(crossed_s=20.0, speed_mps=1.2, direction=Direction.APPROACHING, seed=2 * seed),

@@ -1,0 +1,41 @@
+"""The README's tour, typed as it stands."""
+
+from __future__ import annotations
+
+import os
+import re
+import shutil
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+from tests.system.conftest import environment
+
+ROOT = Path(__file__).parents[2]
+
+
+def test_the_tour_works_as_typed(tmp_path: Path) -> None:
+    tour = (ROOT / "README.md").read_text("utf-8").split("## A short tour")[1].split("\n## ")[0]
+    lines = [line for block in re.findall(r"```sh\n(.*?)```", tour, re.DOTALL) for line in block.splitlines()]
+    assert lines[0] == ". .venv/bin/activate"
+    assert lines[-1] == "ginnel serve"
+    bin_folder = Path(sys.executable).parent
+    if shutil.which("ginnel", path=str(bin_folder)) is None:
+        pytest.skip("ginnel is not installed beside this Python")
+    # the environment of the tests stands for .venv, and serving would never end
+    script = "\n".join(["set -e", *lines[1:-1], "timeout -s INT 4 ginnel serve --port 0 || [ $? = 124 ]"])
+    done = subprocess.run(
+        ["bash", "-c", script],
+        cwd=tmp_path,
+        env=environment() | {"PATH": f"{bin_folder}{os.pathsep}{os.environ['PATH']}"},
+        capture_output=True,
+        text=True,
+        timeout=300,
+    )
+    assert done.returncode == 0, done.stderr
+    assert "The dashboard is at http://127.0.0.1:" in done.stdout
+    counts = (tmp_path / "ropewalk/counts.csv").read_text("utf-8").splitlines()
+    assert counts[0].startswith("sensor,interval_start,")
+    assert (tmp_path / "ropewalk/counts.datapackage.json").is_file()
+    assert any(line.startswith("sensor-1,") for line in counts[1:])
