@@ -30,20 +30,21 @@ from ginnel.store import Store, open_store
 
 @pytest.fixture(params=["sqlite", pytest.param("postgresql", marks=pytest.mark.postgres)])
 def store_url(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[str]:
-    """URL of an empty database that is this test's alone."""
+    """URL of an empty database that is this test's alone: a file, or a schema on the session's server."""
     if request.param == "sqlite":
         yield f"sqlite:///{tmp_path / 'ginnel.db'}"
         return
     server = request.getfixturevalue("postgres_url")
     name = f"ginnel_test_{uuid.uuid4().hex[:12]}"
-    _say(server, f"CREATE DATABASE {name}")
-    yield make_url(server).set(database=name).render_as_string(hide_password=False)
-    _say(server, f"DROP DATABASE {name} WITH (FORCE)")
+    _say(server, f"CREATE SCHEMA {name}")
+    own = make_url(server).update_query_dict({"options": f"-csearch_path={name}"})
+    yield own.render_as_string(hide_password=False)
+    _say(server, "SET lock_timeout = '10s'", f"DROP SCHEMA {name} CASCADE")
 
 
 @pytest.fixture(scope="session")
 def postgres_url() -> Iterator[str]:
-    """URL of a PostgreSQL server on which databases can be made."""
+    """URL of a PostgreSQL database in which schemas can be made."""
     if given := os.environ.get("GINNEL_TEST_POSTGRES"):
         yield given.replace("postgresql://", "postgresql+psycopg://", 1)
         return
@@ -151,10 +152,11 @@ def _group(user: str | None) -> int | None:
     return None if user is None else pwd.getpwnam(user).pw_gid
 
 
-def _say(url: str, statement: str) -> None:
+def _say(url: str, *statements: str) -> None:
     engine = create_engine(url, isolation_level="AUTOCOMMIT", poolclass=NullPool)
     with engine.connect() as connection:
-        connection.execute(text(statement))
+        for statement in statements:
+            connection.execute(text(statement))
     engine.dispose()
 
 

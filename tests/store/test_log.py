@@ -286,7 +286,7 @@ def test_a_store_open_for_reading_refuses_to_write(store: Store, store_url: str)
 second = st.integers(0, 11)
 
 
-@settings(max_examples=15, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=10, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(
     steps=st.lists(
         st.tuples(second, second, st.sampled_from("12"), st.sets(second)).filter(lambda s: s[0] < s[1]),
