@@ -19,6 +19,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from enum import StrEnum
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -190,5 +191,5 @@ def speed_band_labels(edges_mps: Sequence[float]) -> list[str]:
     """Names of all bands between ascending edges, slowest first; one more than edges."""
     if not edges_mps:
         return ["all"]
-    inner = [f"{low:g}-{high:g}" for low, high in zip(edges_mps, edges_mps[1:], strict=False)]
+    inner = [f"{low:g}-{high:g}" for low, high in pairwise(edges_mps)]
     return [f"<{edges_mps[0]:g}", *inner, f">={edges_mps[-1]:g}"]

@@ -13,7 +13,7 @@ from pydantic import BaseModel
 from ginnel.cli import main
 from ginnel.cli.group import COMMANDS
 from ginnel.config import Settings
-from ginnel.export.tables import COUNT_COLUMNS, PASSAGE_COLUMNS, SPEED_COLUMNS, Column
+from ginnel.export.columns import COUNT_COLUMNS, PASSAGE_COLUMNS, SPEED_COLUMNS, Column
 
 ROOT = Path(__file__).parents[2]
 REFERENCE = (ROOT / "docs/reference.md").read_text("utf-8")
