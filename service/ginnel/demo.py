@@ -7,10 +7,13 @@ there is drawn from a seed, so that everybody sees the same morning.
 from __future__ import annotations
 
 import multiprocessing
-from collections.abc import Callable, Sequence
-from concurrent.futures import ProcessPoolExecutor, as_completed
+import signal
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from concurrent.futures import FIRST_COMPLETED, Future, ProcessPoolExecutor, wait
 from dataclasses import dataclass
+from multiprocessing.queues import SimpleQueue
 from pathlib import Path
+from typing import TypeAlias, TypeVar
 
 from ginnel import sim
 from ginnel.capture import RecordedSpan, arrange, find_captures, open_recording
@@ -62,11 +65,15 @@ path = "captures/yard-gate"
 SAMPLE_RATE_HZ = 2000.0
 STARTED_US = 1_772_434_800 * US_PER_S  # Monday 2026-03-02, 07:00 in Dublin
 #: start and length in minutes, walkers an hour, share of them approaching
-HOURS = ((0, 60, 10, 0.8), (60, 48, 28, 0.7), (120, 60, 16, 0.55))
+HOURS = ((0, 60, 8, 0.8), (60, 48, 20, 0.7), (120, 60, 12, 0.55))
 EDGE_S = 15.0
-CHAIN_WORK = 2.0  # reading a second costs about so many times what making it does; only the bar asks
+CHAIN_WORK = 6.0  # reading a second costs about so many times what making it does; only the bar asks
 
 OnProgress = Callable[[float], None]
+_Told: TypeAlias = "SimpleQueue[float]"
+_Result = TypeVar("_Result")
+
+_told: _Told | None = None  # in a working process, where progress is told to
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -117,30 +124,28 @@ def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
     found: dict[str, list[Passage]] = {name: [] for name in sensors}
     listened_s = dict.fromkeys(sensors, 0.0)
     spawn = multiprocessing.get_context("spawn")
+    told: _Told = spawn.SimpleQueue()
     with (
-        ProcessPoolExecutor(2, mp_context=spawn) as pool,
+        ProcessPoolExecutor(2, mp_context=spawn, initializer=_begin, initargs=(told,)) as pool,
         open_store(settings.store.url, create=True) as store,
     ):
         put_site(store, settings.site.to_site())
         making = {
-            pool.submit(make_capture, sensors[name], folders[name], hour): (name, 60.0 * HOURS[hour][1])
+            pool.submit(make_capture, sensors[name], folders[name], hour): name
             for hour in range(len(HOURS))
             for name in sensors
         }
-        for made in as_completed(making):
-            name, cost = making[made]
-            true[name] += made.result()
-            on_progress(cost)
+        for made in _finished(making, told, on_progress):
+            true[making[made]] += made.result()
         spans = [(name, span) for name in sensors for span in recorded_spans(sensors[name], folders[name])]
         spans.sort(key=lambda one: -one[1].n_samples)
-        reading = {pool.submit(find_passages, sensors[name], span): (name, span) for name, span in spans}
-        for read in as_completed(reading):
+        reading = {pool.submit(_read, sensors[name], span): (name, span) for name, span in spans}
+        for read in _finished(reading, told, on_progress):
             name, recorded = reading[read]
             span, passages = recorded.to_span(), read.result()
             record_span(store, sensors[name], span, passages, CHAIN_VERSION)
             found[name] += passages
             listened_s[name] += span.listened_s
-            on_progress(span.listened_s * CHAIN_WORK)
     return [_tally(sensors[name], true[name], found[name], listened_s[name]) for name in sensors]
 
 
@@ -163,7 +168,7 @@ def make_capture(sensor: Sensor, folder: Path, hour: int) -> list[sim.TrueMover]
     try:
         folder.mkdir(parents=True, exist_ok=True)
         stem = sim.capture_name(sensor.name, started_us)
-        sim.write_wav(scene, folder / f"{stem}.wav")
+        sim.write_wav(scene, folder / f"{stem}.wav", on_progress=_tell)
         sim.write_truth(scene, folder / f"{stem}-truth.csv", started_us)
     except OSError as exc:
         raise GinnelError(f"{folder} cannot be written: {exc.strerror or exc}") from exc
@@ -173,6 +178,34 @@ def make_capture(sensor: Sensor, folder: Path, hour: int) -> list[sim.TrueMover]
 def recorded_spans(sensor: Sensor, folder: Path) -> tuple[RecordedSpan, ...]:
     """Put a sensor's captures together."""
     return arrange([open_recording(path, sensor) for path in find_captures([folder])]).spans
+
+
+def _read(sensor: Sensor, recorded: RecordedSpan) -> tuple[Passage, ...]:
+    return find_passages(sensor, recorded, lambda done_s: _tell(CHAIN_WORK * done_s))
+
+
+def _begin(told: _Told) -> None:
+    """Begin a working process: how to tell progress, and to end at once and silently on Ctrl-C."""
+    global _told
+    _told = told
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
+
+
+def _tell(done: float) -> None:
+    if _told is not None:
+        _told.put(done)
+
+
+def _finished(
+    futures: Iterable[Future[_Result]], told: _Told, on_progress: OnProgress
+) -> Iterator[Future[_Result]]:
+    """Give each piece of work when it is done, and pass on progress meanwhile."""
+    pending = set(futures)
+    while pending:
+        done, pending = wait(pending, timeout=0.2, return_when=FIRST_COMPLETED)
+        while not told.empty():
+            on_progress(told.get())
+        yield from done
 
 
 def _tally(

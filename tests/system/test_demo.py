@@ -47,7 +47,7 @@ def test_the_demo_counts_what_passed_and_serves_it(tmp_path: Path) -> None:
     totals = re.findall(r"(\S+) +in 2\.8 h listened +(\d+) +(\d+)", text)
     assert [name for name, _, _ in totals] == ["north-corridor", "yard-gate"]
     for name, counted, passed in totals:
-        assert int(passed) > 30
+        assert int(passed) > 25
         # 5 % is our own aim for a demo (common practice, no source)
         assert abs(int(counted) - int(passed)) <= 0.05 * int(passed), name
     # the promise is 60 s on two cores; a machine busy with other tests gets twice that
