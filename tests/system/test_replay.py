@@ -11,6 +11,8 @@ import numpy as np
 import pytest
 from tests.system.conftest import Ginnel, write_minute
 
+from ginnel.store import open_store, spans
+
 
 def passages(ginnel: Ginnel, *options: str) -> list[dict[str, str]]:
     return list(csv.DictReader(io.StringIO(ginnel("export", "passages", *options).stdout)))
@@ -121,3 +123,15 @@ def test_a_new_mounting_in_the_settings_replaces_what_was_found(ginnel: Ginnel, 
     after = passages(ginnel, "--uncounted")
     assert f"in the log: {len(after)} added, {len(before)} removed, 0 kept" in done.stdout
     assert before
+
+
+def test_each_span_is_read_under_the_mounting_of_its_time(ginnel: Ginnel, tmp_path: Path) -> None:
+    settings = tmp_path / "ginnel.toml"
+    change = "[[sensor.mounting_change]]\nsince = 2026-03-02T08:01:00Z\nheight_m = 3.1\n"
+    settings.write_text(settings.read_text("utf-8") + change, "utf-8")
+    for minute in (0, 2):
+        write_minute(tmp_path / "captures", minute, duration_s=10.0)
+    assert ginnel("replay", "captures").exit_code == 0
+    with open_store(f"sqlite:///{tmp_path}/ginnel.db", read_only=True) as store:
+        heights = [logged.mounting.height_m for logged in spans(store, "lane")]
+    assert heights == [2.4, 3.1]

@@ -177,6 +177,7 @@ def speed(day: Day, scheme: Scheme) -> figure | None:
             )
         )
     plot.xaxis.axis_label = "m/s"
+    plot.yaxis.ticker = FixedTicker(ticks=list(range(0, int(highest) + 1, _step(highest))))
     return _dressed(plot, scheme)
 
 
