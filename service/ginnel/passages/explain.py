@@ -16,6 +16,7 @@ from ginnel.passages.cluster import Cluster
 from ginnel.passages.coarse import find_starts
 from ginnel.passages.fit import NOT_SEEN, Evidence, Fit, gather, refine, score_of, weigh
 from ginnel.passages.mover import Mover
+from ginnel.passages.site import ZONE_COSINE2
 from ginnel.words import FloatArray
 
 #: Nats that a mover must gain. A cluster offers some 10^5 distinguishable movers, so noise alone
@@ -50,6 +51,7 @@ class Explained:
     lost_near: float
     lost_far: float
     snr_db: float
+    mean_speed_mps: float
     zone_gain: FloatArray
     own: NDArray[np.bool_]
 
@@ -119,20 +121,25 @@ def _continues(frame_rate_hz: float, is_iq: bool, one: Explained, piece: Explain
     else:
         apart_s = (one.first_frame - piece.last_frame) / frame_rate_hz
         goes_further = piece.first_frame < one.first_frame
-    speeds = [_mean_speed_mps(one), _mean_speed_mps(piece)]
+    speeds = [one.mean_speed_mps, piece.mean_speed_mps]
     return goes_further and apart_s < _JOINT_S and abs(np.log(speeds[0] / speeds[1])) < _JOINT_SPEED
 
 
-def _mean_speed_mps(one: Explained) -> float:
-    weight = np.maximum(one.zone_gain, 0.0)
-    return one.mover.speed_mps * (1.0 + float(weight @ one.mover.drift) / max(float(weight.sum()), 1e-9))
+def _mean_speed_mps(mover: Mover, zones: FloatArray) -> float:
+    """Speed along the path averaged over the frames in which the line shows it.
+
+    Frames count by the squared cosine of their zones: beside the sensor a line shows no speed.
+    """
+    weight = ZONE_COSINE2 @ zones
+    drift = mover.drift @ zones
+    return mover.speed_mps * (1.0 + float(weight @ drift) / max(float(weight.sum()), 1e-9))
 
 
 def _refit_both(cluster: Cluster, one: Explained, piece: Explained) -> Explained | None:
     """One mover for the cells of two, if it is worth more than the better of them."""
     cluster.free |= one.own | piece.own
     starts = [
-        replace(one.mover, speed_mps=_mean_speed_mps(which), drift=np.zeros_like(one.mover.drift))
+        replace(one.mover, speed_mps=which.mean_speed_mps, drift=np.zeros_like(one.mover.drift))
         for which in (piece, one)
     ]
     best = _best_fit(cluster, [*starts, one.mover])
@@ -253,6 +260,7 @@ def _heard(cluster: Cluster, fit: Fit, rival_score: float, own: NDArray[np.bool_
         far_m=float(x.max()),
         lost_near=lost_near,
         lost_far=lost_far,
+        mean_speed_mps=_mean_speed_mps(fit.mover, cells.line.zones[:, first : last + 1]),
         snr_db=float(10 * np.log10(max(evidence.power.max(), 1e-3))),
         zone_gain=cells.line.zones @ evidence.gain,
         own=own,

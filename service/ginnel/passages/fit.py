@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from ginnel.passages.cluster import Cluster
 from ginnel.passages.mover import Line, Mover, line_of, line_shape
-from ginnel.passages.site import N_ZONES, NEPERS_PER_DB
+from ginnel.passages.site import N_ZONES, NEPERS_PER_DB, Body
 from ginnel.words import FloatArray
 
 #: Gain of one zone, nats, where model errors begin to outweigh chance.
@@ -196,7 +196,7 @@ def _climb(
     diagonal = np.diag(np.diag(information))
     for _ in range(4):
         step = np.linalg.solve(information + damping * diagonal + 1e-9 * np.eye(len(gradient)), gradient)
-        trial = _moved(mover, step)
+        trial = _moved(cluster.site.body, mover, step)
         trial_value = _weighted_gain(cluster, trial, weight) + log_prior(cluster, trial)
         if trial_value > value:
             return trial, trial_value, max(damping / 6, 1e-4)
@@ -204,17 +204,20 @@ def _climb(
     return None
 
 
-def _moved(mover: Mover, step: FloatArray) -> Mover:
+def _moved(body: Body, mover: Mover, step: FloatArray) -> Mover:
     """A mover after a step, kept within what one step may change."""
-    level, drift = step[_N_SHAPE : _N_SHAPE + N_ZONES], step[_N_SHAPE + N_ZONES :]
+    level_step, drift_step = step[_N_SHAPE : _N_SHAPE + N_ZONES], step[_N_SHAPE + N_ZONES :]
+    level = mover.level + np.clip(level_step, -_MAX_STEP_LEVEL, _MAX_STEP_LEVEL)
+    drift = mover.drift + np.clip(drift_step, -_MAX_STEP_DRIFT, _MAX_STEP_DRIFT)
+    middle = float(np.median(level))
     relative = np.clip(step[1] / mover.speed_mps, -0.15, 0.15), np.clip(step[2] / mover.offset_m, -0.3, 0.3)
     return replace(
         mover,
         crossed_s=mover.crossed_s + float(np.clip(step[0], -_MAX_STEP_S, _MAX_STEP_S)),
         speed_mps=mover.speed_mps * (1 + float(relative[0])),
         offset_m=mover.offset_m * (1 + float(relative[1])),
-        level=mover.level + np.clip(level, -_MAX_STEP_LEVEL, _MAX_STEP_LEVEL),
-        drift=mover.drift + np.clip(drift, -_MAX_STEP_DRIFT, _MAX_STEP_DRIFT),
+        level=np.clip(level, middle - body.most_level, middle + body.most_level),
+        drift=np.clip(drift, -body.most_drift, body.most_drift),
     )
 
 

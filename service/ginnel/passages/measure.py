@@ -5,11 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-import numpy as np
-
 from ginnel.passages.explain import Explained
-from ginnel.passages.fit import SATURATION
-from ginnel.passages.site import ZONE_COSINE2
 from ginnel.words import Direction
 
 #: Difference of scores, nats, that makes the odds for a direction e to 1.
@@ -39,9 +35,7 @@ def measure(one: Explained) -> Measured:
     direction = Direction.APPROACHING if one.mover.sign > 0 else Direction.RECEDING
     if confidence < _LEAST_CONFIDENCE:
         direction = Direction.UNKNOWN
-    weight = np.log1p(np.maximum(one.zone_gain, 0.0) / SATURATION) * ZONE_COSINE2
-    drift = float(weight @ one.mover.drift / weight.sum()) if weight.sum() > 0 else 0.0
-    speed_mps = one.mover.speed_mps * (1.0 + drift)
+    speed_mps = one.mean_speed_mps
     variance = float(max(one.fit.covariance[_SPEED_IDX, _SPEED_IDX], 0.0))
     return Measured(
         direction=direction,

@@ -91,5 +91,8 @@ def line_shape(site: Site, line: Line, bins: NDArray[np.intp]) -> FloatArray:
     if not site.is_iq:  # what falls below 0 Hz folds back
         z = (bins + line.centre[..., None]) / width
         shape += np.exp(-0.5 * z * z)
-    shape *= (np.exp(line.log_power) / (line.width * _SQRT_TAU))[..., None]
+    limbs = site.body.limb_share
+    shape *= ((1.0 - limbs) / (line.width * _SQRT_TAU))[..., None]
+    shape += limbs / bins.shape[-1]
+    shape *= np.exp(line.log_power)[..., None]
     return shape

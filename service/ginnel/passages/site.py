@@ -35,6 +35,7 @@ class Body:
     """How far a mover is from being a point."""
 
     length_m: float  # along the path: the spread of its own aspect angles near the sensor
+    limb_share: float  # of the power, spread about the line by limbs or wheels
     gait_ratio: float  # rms wobble of the torso's speed, as a share of it
     reach_m: float  # how far along the path it may be heard
     same_within_m: float  # crossings closer than this belong to one body
@@ -45,12 +46,16 @@ class Body:
     level_slope_sd: float  # its slope with log distance; nominally R^-4
     drift_sd: float  # relative change of speed in one zone
     drift_step_sd: float  # the same, from one zone to the next
+    # No zone departs further than this from the whole, whatever it would gain:
+    most_level: float
+    most_drift: float
     offset_log_sd: float  # nearest distance, relative: a mounting or a lane told wrongly
 
 
 #: Torso swing of the Boulic-Thalmann walk, +-0.245 m/s at 1.34 m/s, is 0.13 rms.
 WALKER = Body(
     length_m=0.3,
+    limb_share=0.4,
     gait_ratio=0.12,
     reach_m=25.0,
     same_within_m=0.7,
@@ -58,13 +63,16 @@ WALKER = Body(
     bend_ratio=1.5,
     zone_level_sd=1.5 * NEPERS_PER_DB,
     level_slope_sd=0.3,
-    drift_sd=0.03,
-    drift_step_sd=0.02,
+    drift_sd=0.05,
+    drift_step_sd=0.04,
+    most_level=6.0 * NEPERS_PER_DB,
+    most_drift=0.12,
     offset_log_sd=0.12,
 )
 #: Drivers brake and speed up; ground reflections and compression make R^-2 to R^-6 of R^-4.
 VEHICLE = Body(
     length_m=3.0,
+    limb_share=0.03,
     gait_ratio=0.01,
     reach_m=150.0,
     same_within_m=12.0,
@@ -74,6 +82,8 @@ VEHICLE = Body(
     level_slope_sd=0.8,
     drift_sd=0.04,
     drift_step_sd=0.06,
+    most_level=20.0 * NEPERS_PER_DB,
+    most_drift=0.3,
     offset_log_sd=0.12,
 )
 

@@ -22,6 +22,8 @@ _SAME_PLACE_M = 2.0
 _FAR_TURN_S = 2.5
 #: A bend this strong, against the body's strongest, is an end of it and no mere leftover.
 _STRONG_PART = 0.2
+#: Score of a piece, against the stronger mover's, below which it is a leftover: any, and a short one.
+_FAINT_SHARE, _PIECE_SHARE = 0.12, 0.3
 #: Slower than this, both ways at once: someone who stands and sways.
 _LOITER_MPS = 0.6
 
@@ -106,10 +108,11 @@ def _merged(site: Site, body: list[Explained]) -> Explained:
 
 
 def _is_leftover(site: Site, weak: Explained, strong: Explained) -> bool:
-    """A short piece that is only heard while a much stronger mover is."""
+    """A short or faint piece that is only heard while a much stronger mover is."""
     path_m = weak.far_m - weak.near_m
     inside = strong.first_frame - 5 <= weak.first_frame and weak.last_frame <= strong.last_frame + 5
-    return inside and path_m < 2 * _least_path_m(site) and weak.fit.score < 0.3 * strong.fit.score
+    share = weak.fit.score / strong.fit.score
+    return inside and (share < _FAINT_SHARE or (share < _PIECE_SHARE and path_m < 2 * _least_path_m(site)))
 
 
 def _joined(movers: list[Explained]) -> list[Explained]:
