@@ -30,6 +30,11 @@ _BALANCE_RATIO = 30.0
 _CLIP_LEVEL = 0.999
 #: A background below this power (full scale 1) is no module's noise: the input is dead.
 DEAF_POWER = 1e-13
+#: Rise of one frame, and of the median of a batch, that chance alone does not bring.
+_FRAME_RISE, _BATCH_RISE = 1.5, 1.4
+#: A rise like this over so many frames is a gain step or an input plugged in: strong movers splash
+#: over all bins too, but less.
+_STEP_RISE, _STEP_FRAMES = 4.0, 33
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,7 +139,7 @@ class FrontEnd:
             return []
         first, self._n_frames = self._n_frames, self._n_frames + len(spectra)
         power = self._power(spectra)
-        self._background.push(power)
+        self._background.push(power, is_risen=self._is_risen(power))
         clipped = clipped[: len(spectra)]
         if self._held is None:
             return [self._judge(first, power, clipped)]
@@ -153,14 +158,22 @@ class FrontEnd:
         if self._is_iq:
             corrected = self._balance.correct(spectra)
             power = corrected.real**2 + corrected.imag**2
-            noise = self._background.power
-            moving = (power > _BALANCE_RATIO * noise) & self.watched
+            noise = self._floored_background()
+            moving = (power > _BALANCE_RATIO * noise * broadband_rise(power, noise)) & self.watched
             self._balance.learn(spectra, noise, moving)
             return power
         return spectra.real**2 + spectra.imag**2
 
+    def _floored_background(self) -> NDArray[np.float32]:
+        return np.maximum(self._background.power, np.float32(DEAF_POWER))
+
+    def _is_risen(self, power: NDArray[np.float32]) -> bool:
+        """Whether all bins at once stand above the background for most of a batch."""
+        rise = _quartile_rise(power, self._floored_background())
+        return bool(np.median(rise) > _BATCH_RISE)
+
     def _judge(self, first: int, power: NDArray[np.float32], clipped: NDArray[np.bool_]) -> SpectrumBatch:
-        background = np.maximum(self._background.power, np.float32(DEAF_POWER))
+        background = self._floored_background()
         stands_out = power > np.float32(self._gate_ratio) * background * broadband_rise(power, background)
         n_detected = np.count_nonzero(stands_out & self.watched, axis=1)
         return SpectrumBatch(first, power, background, n_detected, clipped)
@@ -175,11 +188,22 @@ class FrontEnd:
 def broadband_rise(power: FloatArray, background: FloatArray) -> FloatArray:
     """How far a frame's noise rises in all bins at once, as clicks and gain steps make it; >= 1.
 
-    The first quartile over bins of exponential noise is ln(4/3) of its mean; a rise counts from
-    where chance alone would not bring it (1.5 for some forty bins), and leaves movers alone, which
-    fill fewer than three bins in four. Shape (n_frames, 1).
+    A frame's own rise counts from where chance alone would not bring it (1.5 for some forty bins);
+    a large one that lasts is known better, and counts in full. Shape (n_frames, 1).
+    """
+    rise = _quartile_rise(power, background)
+    padded = np.pad(rise, _STEP_FRAMES // 2, mode="edge") if len(rise) else np.zeros(_STEP_FRAMES)
+    around = np.lib.stride_tricks.sliding_window_view(padded, _STEP_FRAMES)[: len(rise)]
+    lasting = np.median(around, axis=1)
+    rise = np.maximum(rise / _FRAME_RISE, np.where(lasting > _STEP_RISE, lasting, 1.0))
+    return np.asarray(np.maximum(1.0, rise)[:, None], dtype=np.float32)
+
+
+def _quartile_rise(power: FloatArray, background: FloatArray) -> FloatArray:
+    """Noise of each frame over the background, from the first quartile over bins, shape (n_frames,).
+
+    That of exponential noise is ln(4/3) of its mean; movers fill fewer than three bins in four.
     """
     ratio = power / background
     rank = ratio.shape[1] // 4
-    quartile = np.partition(ratio, rank, axis=1)[:, rank : rank + 1]
-    return np.asarray(np.maximum(1.0, quartile / (np.log(4 / 3) * 1.5)), dtype=np.float32)
+    return np.asarray(np.partition(ratio, rank, axis=1)[:, rank] / np.log(4 / 3))

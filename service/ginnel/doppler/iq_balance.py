@@ -13,6 +13,9 @@ from numpy.typing import NDArray
 
 #: Moving energy (in units of noise power) that is worth as much as the prior "well balanced".
 _PRIOR_ENERGY = 2000.0
+#: A cell whose mirror is stronger than this against it, in power, is no mover's: the worst pairs
+#: leave images 10 dB down, while lamps and hum that have just come on are the same on both sides.
+_MIRROR_RATIO = 0.25
 #: Memory of the estimate in moving energy: drifting offsets and ageing are followed slowly.
 _FORGET_ENERGY = 2e6
 
@@ -54,7 +57,7 @@ class IqBalance:
         weight = 1.0 / noise_power[bins]
         here, there = spectra[frames, bins], mirror[frames, bins]
         # Each pair is seen from its stronger side only, else it would count twice.
-        keep = np.abs(here) > np.abs(there)
+        keep = np.abs(there) ** 2 < _MIRROR_RATIO * np.abs(here) ** 2
         self._pseudo_covariance += complex(np.sum((here * there * weight)[keep], dtype=np.complex128))
         energy = float(np.sum(((np.abs(here) ** 2) * weight)[keep], dtype=np.float64))
         self._energy += energy
