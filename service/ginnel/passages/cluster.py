@@ -17,8 +17,8 @@ _OWN_CLUTTER = 0.02
 class Cluster:
     """Frames ``first_frame_idx ..`` of a span as whitened power.
 
-    whitened : (n_frames, n_bins), 1 where there is only noise; reference : reference noise over
-    each cell's noise, 0 outside the watched bins; free : cells not yet given to a mover.
+    whitened : (n_frames, n_bins), 1 where there is only noise and what was set aside; reference :
+    reference noise over each cell's noise, 0 outside the watched bins.
     """
 
     def __init__(
@@ -42,8 +42,24 @@ class Cluster:
         clutter = np.maximum(np.maximum(padded[:-2], padded[2:]), excess)
         noise = noise + _OWN_CLUTTER * clutter[:, None]
         reference_power = float(np.median(background[watched]))
-        self.whitened: FloatArray = np.where(watched, power / noise, 1.0)
-        self.reference: FloatArray = np.where(watched, reference_power / noise, 0.0)
-        self.free: NDArray[np.bool_] = np.broadcast_to(watched, power.shape).copy()
+        self._whitened: FloatArray = np.where(watched, power / noise, 1.0)
+        self._reference: FloatArray = np.where(watched, reference_power / noise, 0.0)
+        self._aside: FloatArray = np.zeros_like(self._whitened)
+        self.whitened, self.reference = self._whitened, self._reference
         strongest = (self.whitened[:, watched] / self.reference[:, watched]).max(initial=3.0)
         self.strongest_db = float(10 * np.log10(strongest))
+
+    def set_aside(self, power: FloatArray) -> None:
+        """Count power (in units of each cell's noise) as explained: it joins the noise."""
+        self._aside = self._aside + power
+        self.whitened = self._whitened / (1.0 + self._aside)
+        self.reference = self._reference / (1.0 + self._aside)
+
+    def take_back(self, power: FloatArray) -> None:
+        """Undo :meth:`set_aside`."""
+        self.set_aside(-power)
+        self._aside = np.maximum(self._aside, 0.0)
+
+    def noise_before(self, frames: NDArray[np.intp]) -> FloatArray:
+        """Reference noise over noise without what was set aside, shape (len(frames), n_bins)."""
+        return self._reference[frames]

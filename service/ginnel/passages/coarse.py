@@ -150,8 +150,8 @@ def _make_tables(cluster: Cluster) -> _Tables:
     merge_t = 2 if site.frame_rate_hz < 40 else 3
     sides = 2 if site.is_iq else 1
     merge_f = max(1, round(cluster.n_bins / sides / _BINS_WANTED))
-    whitened = _merged(np.where(cluster.free, cluster.whitened, 1.0), merge_t, merge_f)
-    reference = _merged(np.where(cluster.free, cluster.reference, 0.0), merge_t, merge_f)
+    whitened = _merged(cluster.whitened, merge_t, merge_f)
+    reference = _merged(cluster.reference, merge_t, merge_f)
     kernel = _KERNEL if merge_f == 1 else _KERNEL_MERGED
     looks = merge_t * merge_f * _LOOKS_SHARE
     levels_db = np.arange(0.0, cluster.strongest_db + _LEVEL_STEP_DB, _LEVEL_STEP_DB)

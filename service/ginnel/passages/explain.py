@@ -14,9 +14,9 @@ from numpy.typing import NDArray
 
 from ginnel.passages.cluster import Cluster
 from ginnel.passages.coarse import find_starts
-from ginnel.passages.fit import NOT_SEEN, Evidence, Fit, gather, refine, score_of, weigh
+from ginnel.passages.fit import NOT_SEEN, Evidence, Fit, gather, log_prior, refine, score_of, weigh
 from ginnel.passages.mover import Mover
-from ginnel.passages.site import ZONE_COSINE2
+from ginnel.passages.site import NEPERS_PER_DB, ZONE_COSINE2
 from ginnel.words import FloatArray
 
 #: Nats that a mover must gain. A cluster offers some 10^5 distinguishable movers, so noise alone
@@ -26,12 +26,18 @@ LEAST_SCORE = 25.0
 #: leftovers of a strong one are of that order.
 _LEAST_SHARE = 0.04
 _MOST_MOVERS = 40
-_N_REFINED = 4
+_N_REFINED = 3
+#: A start with less than this share of the best score is not refined; along a straight line, less will do.
+_WORTH_TRYING, _WORTH_SLIDING = 0.3, 0.1
 _N_ROUNDS = 2
-#: A mover owns the cells within this many line widths, or this share of its frequency.
+#: A mover claims cells within this many line widths, or this share of its frequency ...
 _OWN_WIDTHS, _OWN_SHARE = 2.5, 0.12
+#: ... and to stay, a mover must stand out of the others' claims even if they are wider by this.
+_WIDER_DB = 2.0
+_SQRT_TAU = float(np.sqrt(2 * np.pi))
 #: Two pieces of one line meet within this time and this relative difference of speed.
 _JOINT_S, _JOINT_SPEED = 1.5, 0.2
+_JOINT_SHARE = 0.8
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +59,7 @@ class Explained:
     snr_db: float
     mean_speed_mps: float
     zone_gain: FloatArray
-    own: NDArray[np.bool_]
+    claim: FloatArray
 
     @property
     def mover(self) -> Mover:
@@ -72,7 +78,8 @@ def explain(cluster: Cluster) -> list[Explained]:
             scored = sorted(
                 ((score, mover) for score, mover in scored if score > 5.0), key=lambda pair: -pair[0]
             )
-            best = _best_fit(cluster, [mover for _, mover in scored[:_N_REFINED]])
+            promising = [one for one in scored[:_N_REFINED] if one[0] > _WORTH_TRYING * scored[0][0]]
+            best = _best_fit(cluster, [mover for _, mover in promising])
             if best is not None:
                 best = _slide(cluster, best[0]), best[1]
             if best is None or best[0].score < _score_needed(found, best[0]):
@@ -82,7 +89,39 @@ def explain(cluster: Cluster) -> list[Explained]:
             starts = [mover for _, mover in scored if mover is not start]
         if len(found) == n_before:
             break
+    if len(found) > 1:
+        found = _without_leftovers(cluster, [_again(cluster, one) for one in found])
     return sorted(_reunite(cluster, found), key=lambda one: one.mover.crossed_s)
+
+
+def _again(cluster: Cluster, one: Explained) -> Explained:
+    """Refit a mover now that all the others are known: it may have stood in for one of them."""
+    cluster.take_back(one.claim)
+    fit = refine(cluster, one.mover)
+    if fit is None or fit.score < LEAST_SCORE:
+        fit = one.fit
+    return _settle(cluster, fit)
+
+
+def _without_leftovers(cluster: Cluster, found: list[Explained]) -> list[Explained]:
+    """Drop movers that are within what stronger ones may well have left unexplained."""
+    kept: list[Explained] = []
+    cluster.take_back(_sum(cluster, [one.claim for one in found]))
+    for one in sorted(found, key=lambda mover: -mover.fit.score):
+        wide = _sum(
+            cluster, [_claim(cluster, other.mover, cluster.site.body.claim_db + _WIDER_DB) for other in kept]
+        )
+        cluster.set_aside(wide)
+        score = score_of(cluster, one.mover) + log_prior(cluster, one.mover)
+        cluster.take_back(wide)
+        if score >= _score_needed(kept, one.fit):
+            kept.append(one)
+    cluster.set_aside(_sum(cluster, [one.claim for one in kept]))
+    return kept
+
+
+def _sum(cluster: Cluster, claims: list[FloatArray]) -> FloatArray:
+    return sum(claims, np.zeros_like(cluster.whitened))
 
 
 def _reunite(cluster: Cluster, found: list[Explained]) -> list[Explained]:
@@ -101,10 +140,10 @@ def _reunite(cluster: Cluster, found: list[Explained]) -> list[Explained]:
             default=None,
         )
         joined = None if partner is None else _refit_both(cluster, partner, piece)
-        if partner is None or joined is None:
+        if partner is None:
             whole.append(piece)
         else:
-            whole[whole.index(partner)] = joined
+            whole[whole.index(partner)] = joined or _strung_together(partner, piece)
     return whole
 
 
@@ -136,17 +175,33 @@ def _mean_speed_mps(mover: Mover, zones: FloatArray) -> float:
 
 
 def _refit_both(cluster: Cluster, one: Explained, piece: Explained) -> Explained | None:
-    """One mover for the cells of two, if it is worth more than the better of them."""
-    cluster.free |= one.own | piece.own
+    """One mover for the cells of two, if it is worth about as much as the better of them."""
+    cluster.take_back(one.claim + piece.claim)
     starts = [
         replace(one.mover, speed_mps=which.mean_speed_mps, drift=np.zeros_like(one.mover.drift))
         for which in (piece, one)
     ]
     best = _best_fit(cluster, [*starts, one.mover])
-    if best is None or best[0].score < max(one.fit.score, piece.fit.score):
-        cluster.free &= ~(one.own | piece.own)
+    if best is None or best[0].score < _JOINT_SHARE * max(one.fit.score, piece.fit.score):
+        cluster.set_aside(one.claim + piece.claim)
         return None
     return _settle(cluster, _polished(cluster, best[0]))
+
+
+def _strung_together(one: Explained, piece: Explained) -> Explained:
+    """A mover and the far piece of its line where no single curve fits both."""
+    n_frames = [1 + part.last_frame - part.first_frame for part in (one, piece)]
+    speed_mps = (n_frames[0] * one.mean_speed_mps + n_frames[1] * piece.mean_speed_mps) / sum(n_frames)
+    return replace(
+        one,
+        fit=replace(one.fit, score=max(one.fit.score, piece.fit.score)),
+        mean_speed_mps=speed_mps,
+        first_frame=min(one.first_frame, piece.first_frame),
+        last_frame=max(one.last_frame, piece.last_frame),
+        far_m=max(one.far_m, piece.far_m),
+        lost_far=piece.lost_far,
+        claim=one.claim + piece.claim,
+    )
 
 
 def _best_fit(cluster: Cluster, starts: list[Mover]) -> tuple[Fit, Mover] | None:
@@ -172,6 +227,8 @@ def _slide(cluster: Cluster, fit: Fit) -> Fit:
             offset_m=cluster.site.offset_m,
             drift=np.zeros_like(fit.mover.drift),
         )
+        if score_of(cluster, start) < _WORTH_SLIDING * fit.score:
+            continue
         slid = refine(cluster, start)
         if slid is not None and slid.score > fit.score:
             return _slide(cluster, slid)
@@ -190,9 +247,9 @@ def _score_needed(found: list[Explained], fit: Fit) -> float:
 
 
 def _settle(cluster: Cluster, fit: Fit) -> Explained:
-    """Compare a fitted mover with its rival, take the better, and give it its cells."""
-    own = _own_cells(cluster, fit.mover)
-    rival = _rival(cluster, fit, own)
+    """Compare a fitted mover with its rival, take the better, and set its power aside."""
+    claim = _claim(cluster, fit.mover)
+    rival = _rival(cluster, fit, claim > 0)
     rival_score = NOT_SEEN
     if rival is not None:
         rival_score = rival.score
@@ -200,26 +257,35 @@ def _settle(cluster: Cluster, fit: Fit) -> Explained:
             swapped = refine(cluster, rival.mover)
             if swapped is not None and swapped.score > fit.score:
                 fit, rival_score = swapped, fit.score
-                own = _own_cells(cluster, fit.mover)
-    explained = _heard(cluster, fit, rival_score, own)
-    cluster.free &= ~own
+                claim = _claim(cluster, fit.mover)
+    explained = _heard(cluster, fit, rival_score, claim)
+    cluster.set_aside(claim)
     return explained
 
 
-def _own_cells(cluster: Cluster, mover: Mover) -> NDArray[np.bool_]:
-    own = np.zeros_like(cluster.free)
+def _claim(cluster: Cluster, mover: Mover, margin_db: float | None = None) -> FloatArray:
+    """Power that a mover accounts for, in units of each cell's noise: its line and some tolerance.
+
+    Its level is taken up to ``margin_db`` and, where its frames really are stronger, a
+    little more: what exceeds that is somebody else's.
+    """
+    claim = np.zeros_like(cluster.whitened)
     cells = gather(cluster, mover)
     if cells is None:
-        return own
+        return claim
     evidence = weigh(cluster, cells)
     first, last = _best_stretch(evidence.gain)
     n = np.arange(len(cells.frames))
-    mine = (n >= first - 4) & (n <= last + 4) & (evidence.weight > 0)
-    line = cells.line
+    mine = (n >= first - 4) & (n <= last + 4)
+    line, frames = cells.line, cells.frames[mine]
     reach = np.maximum(_OWN_WIDTHS * line.width, _OWN_SHARE * np.abs(line.centre)) + 1.0
+    margin_db = cluster.site.body.claim_db if margin_db is None else margin_db
+    level_db = margin_db + np.clip(evidence.stronger_db, 0.0, margin_db)
+    density = np.exp(line.log_power + level_db * NEPERS_PER_DB) / (line.width * _SQRT_TAU)
     bins = np.arange(cluster.n_bins) + cluster.site.plan.first_bin_idx
-    own[cells.frames[mine]] = np.abs(bins - line.centre[mine, None]) <= reach[mine, None]
-    return own
+    near = np.abs(bins - line.centre[mine, None]) <= reach[mine, None]
+    claim[frames] = near * density[mine, None] * cluster.noise_before(frames)
+    return claim
 
 
 def _rival(cluster: Cluster, fit: Fit, own: NDArray[np.bool_]) -> Fit | None:
@@ -243,7 +309,7 @@ def _rival(cluster: Cluster, fit: Fit, own: NDArray[np.bool_]) -> Fit | None:
         cluster.whitened = whitened
 
 
-def _heard(cluster: Cluster, fit: Fit, rival_score: float, own: NDArray[np.bool_]) -> Explained:
+def _heard(cluster: Cluster, fit: Fit, rival_score: float, claim: FloatArray) -> Explained:
     cells = gather(cluster, fit.mover)
     assert cells is not None  # noqa: S101 - a fit has cells
     evidence: Evidence = weigh(cluster, cells)
@@ -263,7 +329,7 @@ def _heard(cluster: Cluster, fit: Fit, rival_score: float, own: NDArray[np.bool_
         mean_speed_mps=_mean_speed_mps(fit.mover, cells.line.zones[:, first : last + 1]),
         snr_db=float(10 * np.log10(max(evidence.power.max(), 1e-3))),
         zone_gain=cells.line.zones @ evidence.gain,
-        own=own,
+        claim=claim,
     )
 
 

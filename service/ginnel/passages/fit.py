@@ -41,7 +41,7 @@ class Cells:
     frames: NDArray[np.intp]  # (n,)
     bins: NDArray[np.intp]  # (n, w), from 0 Hz
     whitened: FloatArray  # (n, w)
-    reference: FloatArray  # (n, w), 0 where a cell is not free
+    reference: FloatArray  # (n, w), 0 where a cell is not watched
     line: Line
 
 
@@ -54,10 +54,11 @@ class Evidence:
     weight: FloatArray
     raw: FloatArray
     power: FloatArray
+    stronger_db: FloatArray  # how much stronger than the mover's level each frame is
 
 
 def gather(cluster: Cluster, mover: Mover) -> Cells | None:
-    """Free cells about a mover's line wherever it should be seen; None if nowhere."""
+    """Cells about a mover's line wherever it should be seen; None if nowhere."""
     site = cluster.site
     reach_s = site.body.reach_m / mover.speed_mps
     behind_s = site.behind_m / mover.speed_mps + 0.1
@@ -87,9 +88,8 @@ def gather(cluster: Cluster, mover: Mover) -> Cells | None:
     inside = (column >= 0) & (column < cluster.n_bins)
     column = np.clip(column, 0, cluster.n_bins - 1)
     frames = chosen + low
-    usable = inside & cluster.free[frames[:, None], column]
-    whitened = np.where(usable, cluster.whitened[frames[:, None], column], 1.0)
-    reference = np.where(usable, cluster.reference[frames[:, None], column], 0.0)
+    whitened = np.where(inside, cluster.whitened[frames[:, None], column], 1.0)
+    reference = np.where(inside, cluster.reference[frames[:, None], column], 0.0)
     return Cells(frames, bins, whitened, reference, line)
 
 
@@ -116,7 +116,7 @@ def weigh(cluster: Cluster, cells: Cells) -> Evidence:
     positive = np.maximum(zone_gain, 0.0)
     score = np.where(zone_gain > 0, SATURATION * np.log1p(positive / SATURATION), zone_gain).sum()
     weight = weight * ((1.0 / (1.0 + positive / SATURATION)) @ cells.line.zones)
-    return Evidence(float(score), gain, weight, raw, power)
+    return Evidence(float(score), gain, weight, raw, power, stronger_db)
 
 
 def log_prior(cluster: Cluster, mover: Mover) -> float:

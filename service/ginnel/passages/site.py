@@ -41,6 +41,7 @@ class Body:
     same_within_m: float  # crossings closer than this belong to one body
     longest_m: float  # no body is longer
     bend_ratio: float  # a passage is heard this near to the sensor, in nearest distances
+    claim_db: float  # how far above its level a mover's line may be and still be its own
     # Prior spreads, weighed against evidence that model errors limit (see ``fit.SATURATION``):
     zone_level_sd: float  # log power in one zone against the nominal curve
     level_slope_sd: float  # its slope with log distance; nominally R^-4
@@ -60,7 +61,8 @@ WALKER = Body(
     reach_m=25.0,
     same_within_m=0.7,
     longest_m=1.0,
-    bend_ratio=1.5,
+    bend_ratio=1.0,
+    claim_db=3.0,
     zone_level_sd=1.5 * NEPERS_PER_DB,
     level_slope_sd=0.3,
     drift_sd=0.05,
@@ -78,6 +80,7 @@ VEHICLE = Body(
     same_within_m=12.0,
     longest_m=18.75,  # the longest road train, Council Directive 96/53/EC, from memory
     bend_ratio=0.4,
+    claim_db=10.0,
     zone_level_sd=4.0 * NEPERS_PER_DB,
     level_slope_sd=0.8,
     drift_sd=0.04,

@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ginnel.passages.explain import Explained
+from ginnel.passages.explain import LEAST_SCORE, Explained
 from ginnel.passages.site import NEPERS_PER_DB, Site
 from ginnel.words import Story
 
@@ -16,10 +16,13 @@ _LEAST_VEHICLE_PATH_M = 5.0
 #: Where the beam still hears well, for mountings that look past the sensor line.
 _WELL_HEARD = -10.0 * NEPERS_PER_DB
 #: Two legs are one person turning if speed and level agree like this and little time lies between.
-_SAME_SPEED, _SAME_LEVEL_DB, _TURN_S = 0.15, 2.5, 5.0
+_SAME_SPEED, _SAME_LEVEL_DB, _TURN_S = 0.2, 2.5, 5.0
 #: Where a mover turns far from the sensor, both legs end at the same place within this.
-_SAME_PLACE_M = 2.0
-_FAR_TURN_S = 2.5
+_SAME_PLACE_M, _LIKE_LEVEL_DB, _FAR_TURN_S = 2.0, 6.0, 4.0
+#: Legs of one who turns may seem to overlap by this much: frames are long.
+_MEETING_S = -0.8
+#: A far leg is abrupt if silence costs it this share of its score.
+_ABRUPT_SHARE = 0.03
 #: A bend this strong, against the body's strongest, is an end of it and no mere leftover.
 _STRONG_PART = 0.2
 #: Score of a piece, against the stronger mover's, below which it is a leftover: any, and a short one.
@@ -45,13 +48,8 @@ def tell(site: Site, movers: list[Explained]) -> list[Told]:
         if any(_loiter_together(one, other) for other in bodies):
             stories[id(one)] = Story.FIDGET
     passing = [one for one in bodies if stories[id(one)] is Story.PASSAGE]
-    index = 0
-    while index + 1 < len(passing):
-        first, second = passing[index], passing[index + 1]
-        if _turns(site, first, second):
-            stories[id(first)] = stories[id(second)] = Story.TURN_BACK
-            index += 1
-        index += 1
+    for first, second in _turning_pairs(site, passing):
+        stories[id(first)] = stories[id(second)] = Story.TURN_BACK
     return [
         Told(one, stories[id(one)], any(other is not one and _together(one, other) for other in bodies))
         for one in bodies
@@ -104,6 +102,8 @@ def _merged(site: Site, body: list[Explained]) -> Explained:
         fit=replace(main.fit, mover=mover),
         first_frame=min(one.first_frame for one in body),
         last_frame=max(one.last_frame for one in body),
+        near_m=min(one.near_m for one in body),
+        far_m=max(one.far_m for one in body),
     )
 
 
@@ -170,19 +170,43 @@ def _loiter_together(one: Explained, other: Explained) -> bool:
     return slow and one.mover.sign != other.mover.sign and _together(one, other)
 
 
+def _turning_pairs(site: Site, movers: list[Explained]) -> list[tuple[Explained, Explained]]:
+    """Pairs that are the two legs of one who turns, as many as possible, none in two pairs.
+
+    Legs follow each other in time, so that pairing from the front leaves the fewest alone.
+    """
+    pairs: list[tuple[Explained, Explained]] = []
+    left = sorted(movers, key=lambda one: one.first_frame)
+    while left:
+        first = left.pop(0)
+        second = next((one for one in left if _turns(site, first, one)), None)
+        if second is not None:
+            left.remove(second)
+            pairs.append((first, second))
+    return pairs
+
+
 def _turns(site: Site, first: Explained, second: Explained) -> bool:
-    """Whether two successive movers are the two legs of one that turns."""
+    """Whether two movers are the two legs of one that turns, near the sensor or far from it."""
     a, b = first.mover, second.mover
-    if a.sign == b.sign or abs(np.log(a.speed_mps / b.speed_mps)) > _SAME_SPEED:
-        return False
-    shared = np.minimum(np.maximum(first.zone_gain, 0), np.maximum(second.zone_gain, 0))
-    if shared.sum() <= 0:
-        return False
-    apart_db = abs(float(shared @ (a.level - b.level) / shared.sum())) / NEPERS_PER_DB
-    if apart_db > _SAME_LEVEL_DB:
+    if a.sign == b.sign or abs(np.log(first.mean_speed_mps / second.mean_speed_mps)) > _SAME_SPEED:
         return False
     between_s = (second.first_frame - first.last_frame) / site.frame_rate_hz
+    apart_db = _levels_apart_db(first, second)
     if a.sign > 0:
-        return -0.7 < between_s < _TURN_S
-    meets = abs(first.far_m - second.far_m) < _SAME_PLACE_M
-    return meets and -0.7 < between_s < _FAR_TURN_S
+        return apart_db < _SAME_LEVEL_DB and _MEETING_S < between_s < _TURN_S
+    meets = abs(first.far_m - second.far_m) < _SAME_PLACE_M and _MEETING_S < between_s < _FAR_TURN_S
+    return meets and apart_db < _LIKE_LEVEL_DB and _ends_abruptly(first) and _ends_abruptly(second)
+
+
+def _ends_abruptly(one: Explained) -> bool:
+    """Whether a leg ends far away where it should still be heard: it did not fade, it turned."""
+    return one.lost_far < -max(LEAST_SCORE, _ABRUPT_SHARE * one.fit.score)
+
+
+def _levels_apart_db(first: Explained, second: Explained) -> float:
+    """Difference of two movers' levels, dB, over the zones in which both were heard."""
+    shared = np.minimum(np.maximum(first.zone_gain, 0), np.maximum(second.zone_gain, 0))
+    if shared.sum() <= 0:
+        return np.inf
+    return abs(float(shared @ (first.mover.level - second.mover.level) / shared.sum())) / NEPERS_PER_DB
