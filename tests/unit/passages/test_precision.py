@@ -21,7 +21,7 @@ RATE_HZ = 2000.0
 CARRIER_HZ = 10.525e9
 OFFSET_M = 1.4  # a sensor at 2.4 m over a walker's centre line at 1 m
 NOISE_RMS = 0.01
-N_SEEDS = 30
+N_SEEDS = 8  # of each of four cases: 32
 
 
 def range_and_level(
@@ -93,7 +93,7 @@ CASES = [(Channels.MONO, 1), (Channels.MONO, -1), (Channels.IQ, 1), (Channels.IQ
 
 
 @pytest.mark.parametrize(("channels", "sign"), CASES)
-@pytest.mark.parametrize(("snr_db", "n_seeds"), [(15.0, N_SEEDS // 2), (30.0, 4)])
+@pytest.mark.parametrize(("snr_db", "n_seeds"), [(15.0, N_SEEDS), (30.0, 2)])
 def test_a_point_that_moves_is_one_passage_at_its_time_and_its_way(
     channels: Channels, sign: int, snr_db: float, n_seeds: int
 ) -> None:
@@ -103,21 +103,20 @@ def test_a_point_that_moves_is_one_passage_at_its_time_and_its_way(
         assert found[0].crossed_us / 1e6 == pytest.approx(crossed_s, abs=0.3)
 
 
-@pytest.mark.parametrize("channels", list(Channels))
-def test_speed_is_nearly_unbiased_and_no_better_than_the_bound(channels: Channels) -> None:
-    relative, stated = [], []
-    for sign, speed_mps in ((1, 1.34), (-1, 1.0)):
-        for _, found in measured(channels, sign, 15.0, N_SEEDS // 2):
+def test_speed_is_nearly_unbiased_and_no_better_than_the_bound() -> None:
+    relative, stated, least = [], [], []
+    for channels, sign in CASES:
+        speed_mps = 1.34 if sign > 0 else 1.0
+        least.append(speed_bound_mps(channels, sign, 15.0) / speed_mps)
+        for _, found in measured(channels, sign, 15.0, N_SEEDS):
             assert found[0].speed_mps is not None
             assert found[0].speed_se_mps is not None
             relative.append(found[0].speed_mps / speed_mps - 1)
             stated.append(found[0].speed_se_mps / speed_mps)
-    assert len(relative) == 2 * (N_SEEDS // 2)
+    assert len(relative) == 4 * N_SEEDS
     spread = np.std(relative, ddof=1)
-    least = min(speed_bound_mps(channels, sign, 15.0) / (1.34 if sign > 0 else 1.0) for sign in (1, -1))
-    assert spread > least
+    assert min(least) < spread < 0.03
     # The template expects limbs about the line, and a point has none: 3 % low was measured.
     assert abs(np.mean(relative)) < 0.045
     # The stated error covers what is really made.
     assert np.sqrt(np.mean(np.square(relative))) < 2 * np.mean(stated)
-    assert spread < 0.03
