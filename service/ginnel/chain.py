@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections import deque
+
 import numpy as np
 
 from ginnel.doppler.frontend import CELL_FALSE_ALARM_RATE, FrontEnd, SpectrumBatch
@@ -19,6 +21,8 @@ CHAIN_VERSION = "1"
 #: Heard this near to the span's end or beginning: the span cut it.
 _CUT_S = 0.5
 _LOW_CONFIDENCE = 0.9
+#: So far apart may two fits of one mover on both sides of a cut put its crossing.
+_SEAM_S = 1.0
 
 
 class Chain:
@@ -39,6 +43,7 @@ class Chain:
         self._started_us = started_us
         self._n_samples = 0
         self._last_crossed_us = started_us - US_PER_S
+        self._given: deque[tuple[float, int]] = deque(maxlen=16)
 
     @property
     def settled_us(self) -> int:
@@ -78,9 +83,23 @@ class Chain:
         passages = []
         for one in told:
             crossed_frame = one.one.mover.crossed_s * self._site.frame_rate_hz
-            if stretch.own_first <= crossed_frame < stretch.own_last:
+            if self._belongs(stretch, one, crossed_frame):
                 passages.append(self._passage(stretch, one, crossed_frame))
+                self._given.append((crossed_frame, one.one.mover.sign))
         return passages
+
+    def _belongs(self, stretch: Stretch, told: Told, crossed_frame: float) -> bool:
+        """Whether a mover belongs to this stretch, or to its neighbour beyond a cut.
+
+        Two fits of one mover near a cut may put its crossing on either side: whichever stretch
+        comes second looks at what the first gave out.
+        """
+        seam = _SEAM_S * self._site.frame_rate_hz
+        if not stretch.own_first - seam <= crossed_frame < stretch.own_last:
+            return False
+        return crossed_frame >= stretch.own_first + seam or not any(
+            sign == told.one.mover.sign and abs(crossed_frame - given) < seam for given, sign in self._given
+        )
 
     def _passage(self, stretch: Stretch, told: Told, crossed_frame: float) -> Passage:
         one = told.one

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -208,5 +209,6 @@ def _levels_apart_db(first: Explained, second: Explained) -> float:
     """Difference of two movers' levels, dB, over the zones in which both were heard."""
     shared = np.minimum(np.maximum(first.zone_gain, 0), np.maximum(second.zone_gain, 0))
     if shared.sum() <= 0:
-        return np.inf
-    return abs(float(shared @ (first.mover.level - second.mover.level) / shared.sum())) / NEPERS_PER_DB
+        return math.inf
+    apart = float(shared @ (first.mover.level - second.mover.level)) / float(shared.sum())
+    return abs(apart) / float(NEPERS_PER_DB)
