@@ -105,6 +105,12 @@ def test_two_of_unlike_speed_or_level_who_meet_are_two_passages() -> None:
     assert stories(tell(PATH, [first, louder])) == [Story.PASSAGE] * 2
 
 
+def test_two_who_go_one_way_one_after_the_other_are_two_passages() -> None:
+    first, second = leg(20.0), leg(27.5)
+    assert 0 < second.first_frame - first.last_frame < 5 * PATH.frame_rate_hz
+    assert stories(tell(PATH, [first, second])) == [Story.PASSAGE] * 2
+
+
 def test_who_comes_back_after_ten_seconds_is_two_passages() -> None:
     assert stories(tell(PATH, [leg(20.0), leg(30.5, sign=-1)])) == [Story.PASSAGE] * 2
 
