@@ -28,6 +28,8 @@ _ABRUPT_SHARE = 0.03
 _STRONG_PART = 0.2
 #: Score of a piece, against the stronger mover's, below which it is a leftover: any, and a short one.
 _FAINT_SHARE, _PIECE_SHARE = 0.12, 0.3
+#: Legs and arms: mostly heard and crossing with their body, fainter, and slower or faster than it.
+_LIMB_TOGETHER, _LIMB_S, _LIMB_DB, _LIMB_SPEED = 0.6, 1.5, 6.0, 0.25
 #: Slower than this, both ways at once: someone who stands and sways.
 _LOITER_MPS = 0.6
 
@@ -112,8 +114,22 @@ def _is_leftover(site: Site, weak: Explained, strong: Explained) -> bool:
     """A short or faint piece that is only heard while a much stronger mover is."""
     path_m = weak.far_m - weak.near_m
     inside = strong.first_frame - 5 <= weak.first_frame and weak.last_frame <= strong.last_frame + 5
+    if _is_limb(weak, strong):
+        return True
     share = weak.fit.score / strong.fit.score
     return inside and (share < _FAINT_SHARE or (share < _PIECE_SHARE and path_m < 2 * _least_path_m(site)))
+
+
+def _is_limb(weak: Explained, strong: Explained) -> bool:
+    """Whether a faint mover goes the same way at the same time as a strong one, but not at its speed."""
+    together = min(weak.last_frame, strong.last_frame) - max(weak.first_frame, strong.first_frame)
+    return (
+        weak.mover.sign == strong.mover.sign
+        and together > _LIMB_TOGETHER * (weak.last_frame - weak.first_frame)
+        and abs(weak.mover.crossed_s - strong.mover.crossed_s) < _LIMB_S
+        and weak.snr_db < strong.snr_db - _LIMB_DB
+        and abs(math.log(weak.mean_speed_mps / strong.mean_speed_mps)) > _LIMB_SPEED
+    )
 
 
 def _joined(movers: list[Explained]) -> list[Explained]:
