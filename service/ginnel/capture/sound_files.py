@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -144,8 +145,8 @@ def look_at_sound_file(path: Path, sensor: Sensor, raw: RawFormat | None) -> Sou
             header_us = read_wav_header(path).bext_us
         elif head[:4] != b"fLaC":
             raise CaptureFormatError(
-                f"{path}: is no WAV or FLAC file (it begins with {head[:8]!r}); raw PCM needs its "
-                "sample type and rate stated"
+                f"{path}: is no WAV or FLAC file (it begins with {head[:8]!r}); raw PCM needs "
+                "--raw-format and --rate"
             )
     try:
         with _open(path, raw) as file:
@@ -207,7 +208,8 @@ def _check_last_sample(path: Path, file: Any, n_samples: int) -> None:
 def _open(path: Path, raw: RawFormat | None) -> Any:
     import soundfile
 
-    return soundfile.SoundFile(path, "r", **(raw.options() if raw else {}))
+    # as bytes, since a name on disk need not be UTF-8
+    return soundfile.SoundFile(os.fsencode(path), "r", **(raw.options() if raw else {}))
 
 
 def _reason(exc: Exception) -> str:

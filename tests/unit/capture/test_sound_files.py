@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import struct
 import tracemalloc
 from pathlib import Path
@@ -369,3 +370,11 @@ def test_memory_does_not_grow_with_the_length_of_a_file(tmp_path: Path) -> None:
         peaks.append(tracemalloc.get_traced_memory()[1])
         tracemalloc.stop()
     assert peaks[1] < 1.2 * peaks[0]
+
+
+def test_a_name_that_is_not_utf_8_is_read_like_any_other(tmp_path: Path) -> None:
+    plain = tmp_path / "plain.wav"
+    soundfile.write(plain, wave(), 8000)
+    odd = Path(os.fsdecode(os.fsencode(tmp_path) + b"/caf\xe9-20260302T081500Z.wav"))  # Latin-1
+    plain.rename(odd)
+    assert len(read(open_recording(odd, MONO))) == 5000
