@@ -8,7 +8,7 @@ import sys
 from pathlib import Path
 
 import pytest
-from sqlalchemy import text
+from sqlalchemy import make_url, text
 
 from ginnel.errors import StoreBusyError, StoreError
 from ginnel.store import Store, engine, open_store, put_site, site
@@ -134,3 +134,31 @@ def test_a_name_with_odd_characters_is_a_file_name(tmp_path: Path) -> None:
     plain = sqlite3.connect(path)
     assert plain.execute("SELECT name FROM site").fetchone() == ("odd",)
     plain.close()
+
+
+@pytest.mark.parametrize(
+    ("said", "told"),
+    [
+        # what SQLite 3.40 says on a file system mounted read-only, and on a full one (tried by hand)
+        ("unable to open database file", "make both the store and its folder writable"),
+        ("attempt to write a readonly database", "make both the store and its folder writable"),
+        ("database or disk is full", "the disk is full: make room on it"),
+    ],
+)
+def test_what_the_disk_refuses_is_told_with_the_mend(said: str, told: str) -> None:
+    url = make_url("sqlite:////var/lib/ginnel/ginnel.db")
+    with pytest.raises(StoreError, match=told) as caught, engine.translated(url):
+        raise sqlite3.OperationalError(said)
+    assert str(caught.value).startswith("/var/lib/ginnel/ginnel.db")
+
+
+def overfill(store: Store) -> None:
+    with store.writing() as connection:
+        connection.execute(text("PRAGMA max_page_count = 1"))  # SQLite makes it what the file has already
+        connection.execute(text("CREATE TABLE big AS SELECT zeroblob(100000) AS zeros"))
+
+
+def test_a_store_that_may_not_grow_says_that_the_disk_is_full(tmp_path: Path) -> None:
+    with open_store(f"sqlite:///{tmp_path / 'ginnel.db'}", create=True) as store:
+        with pytest.raises(StoreError, match="the disk is full"):
+            overfill(store)

@@ -143,6 +143,13 @@ def translated(url: URL) -> Iterator[None]:
         text = " ".join(str(cause).split())
         if "is locked" in text or "database is busy" in text:
             raise StoreBusyError(f"{shown(url)} is in use by another writer: try again") from error
+        if "unable to open database file" in text or "readonly database" in text:
+            raise StoreError(
+                f"{shown(url)} cannot be opened: SQLite keeps files of its own beside it, so make both the "
+                f"store and its folder writable for this user"
+            ) from error
+        if "disk is full" in text:
+            raise StoreError(f"{shown(url)}: the disk is full: make room on it, then try again") from error
         if "not a database" in text:
             raise StoreError(f"{shown(url)} is not a Ginnel store (not a SQLite database)") from error
         if isinstance(error, DBAPIError) and url.get_backend_name() == "postgresql" and _lost(error):
