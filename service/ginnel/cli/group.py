@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import importlib
+import sys
+from typing import Any
 
 import click
 
@@ -36,6 +38,15 @@ class _LazyGroup(click.Group):
     def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         with formatter.section("Commands"):
             formatter.write_dl(sorted(COMMANDS.items()))
+
+    def main(self, *args: Any, **kwargs: Any) -> Any:
+        """Run; what the system refuses and no room foresaw is a line too."""
+        try:
+            return super().main(*args, **kwargs)
+        except OSError as exc:
+            what = exc.filename or "the output"
+            click.echo(f"ginnel: {what}: {exc.strerror or exc}", err=True)
+            sys.exit(1)
 
     def invoke(self, ctx: click.Context) -> object:
         try:

@@ -65,9 +65,15 @@ def write_wav(scene: Scene, path: Path, *, on_progress: OnProgress | None = None
         raise ValueError(f"a WAV file has a whole sample rate, not {scene.sample_rate_hz=}")
     # Sizes in a plain WAV file are 32 bits wide; RF64 is the same with 64 (EBU Tech 3306).
     container = "RF64" if 2 * channels * scene.n_samples > _PLAIN_WAV_BYTES else "WAV"
-    with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16", format=container) as file:
-        for block in _told_blocks(scene, on_progress):
-            file.write(_columns(block, scene.sensor))
+    try:
+        with soundfile.SoundFile(path, "w", rate_hz, channels, subtype="PCM_16", format=container) as file:
+            for block in _told_blocks(scene, on_progress):
+                file.write(_columns(block, scene.sensor))
+    except BaseException as exc:
+        path.unlink(missing_ok=True)  # half a capture is none, Ctrl-C or not
+        if isinstance(exc, soundfile.LibsndfileError):
+            raise OSError(f"{exc.error_string.rstrip('.')}; is the disk full?") from exc
+        raise
     return path
 
 

@@ -151,6 +151,32 @@ def test_a_port_in_use_is_one_clear_line() -> None:
     assert done.stderr == f"ginnel: port {port} is in use already: choose another with --port\n"
 
 
+@pytest.mark.parametrize("arguments", [("--help",), ("export", "passages")])
+def test_an_output_that_takes_no_more_is_one_clear_line(arguments: tuple[str, ...]) -> None:
+    ginnel("init")
+    script = "from ginnel.cli import main; main(prog_name='ginnel')"
+    with Path("/dev/full").open("wb") as full:  # the kernel's own full disk
+        done = subprocess.run(
+            [sys.executable, "-c", script, *arguments],
+            stdout=full,
+            stderr=subprocess.PIPE,
+            text=True,
+            timeout=60,
+        )
+    assert done.returncode == 1
+    assert done.stderr == "ginnel: the output: No space left on device\n"
+
+
+def test_simulate_on_a_full_disk_is_one_clear_line_and_leaves_no_half_capture(tmp_path: Path) -> None:
+    capture = tmp_path / "captures/simulated-20260302T080000Z.wav"
+    capture.parent.mkdir()
+    capture.symlink_to("/dev/full")
+    done = ginnel("simulate", "--minutes", "0.5", "--rate", "2k")
+    assert done.exit_code == 1
+    assert re.fullmatch(r"ginnel: captures cannot be written: .*is the disk full\?\n", done.stderr)
+    assert not capture.is_symlink()
+
+
 def test_simulate_gives_the_same_files_for_the_same_seed(tmp_path: Path) -> None:
     for folder in ("a", "b"):
         done = ginnel("simulate", folder, "--minutes", "0.5", "--rate", "2k", "--per-hour", "600")
