@@ -74,6 +74,8 @@ def write(store: Store, table: Table, output: Output) -> int:
     path = output.resolve()
     if path.exists() and not path.is_file():
         raise ExportError(f"{output} is not a file: give a file name, or none for standard output")
+    if not path.parent.is_dir():
+        raise ExportError(f"{output} cannot be written: there is no folder {output.parent}: make it first")
     beside = path.with_name(f"{path.stem}.datapackage.json")
     with _whole(path) as draft:
         with draft.open("w", encoding="utf-8", newline="") as stream:
