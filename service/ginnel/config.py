@@ -293,6 +293,8 @@ def load_settings(given: Path | None = None) -> Settings:
         raw = tomllib.loads(text)
     except UnicodeDecodeError as exc:
         raise ConfigError(f"{path}: not UTF-8 text: {exc.reason} at byte {exc.start}") from exc
+    except FileNotFoundError as exc:
+        raise ConfigError(f"{path}: is not there: make one with `ginnel init`, or name another") from exc
     except OSError as exc:
         raise ConfigError(f"{path}: cannot be read: {exc.strerror}") from exc
     except tomllib.TOMLDecodeError as exc:

@@ -12,6 +12,12 @@ from pydantic import BaseModel, ValidationError
 _HEADER = re.compile(r"^\s*(\[\[?)\s*([^\[\]#]+?)\s*\]")
 _ENTRY = re.compile(r"^\s*([A-Za-z0-9_\-\"']+)\s*=")
 
+#: What the patterns of the settings mean, by key.
+_PATTERNS = {
+    "name": "must be letters, digits, dot, dash and underscore, and begin with a letter or digit",
+    "url": "must be sqlite:///FILE or postgresql+psycopg://USER@HOST/NAME",
+}
+
 
 def describe(
     exc: ValidationError, path: Path | None, text: str, environ: Mapping[str, str], root: type[BaseModel]
@@ -72,8 +78,10 @@ def _key(loc: tuple[str, ...]) -> str:
 
 def _what(error: dict[str, object], loc: tuple[str, ...], root: type[BaseModel]) -> str:
     if error["type"] == "extra_forbidden":
-        near = difflib.get_close_matches(loc[-1], _known_keys(root), n=1)
+        near = difflib.get_close_matches(loc[-1], set(_known_keys(root)) - {loc[-1]}, n=1)
         return "unknown key" + (f"; did you mean {near[0]}?" if near else "")
+    if error["type"] == "string_pattern_mismatch" and loc[-1] in _PATTERNS:
+        return f"{_PATTERNS[loc[-1]]} (it is {error.get('input')!r})"
     message = str(error["msg"]).removeprefix("Value error, ").replace("Input should be", "must be")
     given = error.get("input")
     shown = f" (it is {given!r})" if isinstance(given, str | int | float) else ""

@@ -126,12 +126,13 @@ def test_the_commented_keys_of_the_generated_file_can_all_be_uncommented(tmp_pat
         ('channels = "mono"', 'channels = "stereo"', 10, r"channels: must be 'mono' or 'iq'"),
         ('channels = "mono"', "swap_iq = true", 7, r'swap_iq needs channels = "iq"'),
         ("2026-03-02T00:00:00Z", "2026-03-02T00:00:00", 23, r"since: .*timezone"),
-        ('"north-corridor"', '"north corridor"', 8, r"sensor\[0\]\.name"),
+        ('"north-corridor"', '"north corridor"', 8, r"sensor\[0\]\.name: must be letters, digits"),
         ('kind = "folder"', 'kind = "carrier-pigeon"', 28, r"source\.kind: must be 'folder'"),
         ('"to the street"', '"to the workshops"', 24, r"two different names"),
         ("[sensor.source]", "[sensor.sauce]", 27, r"sensor\[0\]\.sauce: unknown key; did you mean source"),
         ("mains_hz = 50", "mains_hz = 'fifty'", 11, r"mains_hz: must be a valid number.*\(it is 'fifty'\)"),
-        ("sqlite:///ginnel.db", "mysql://x", 6, r"store\.url"),
+        ("sqlite:///ginnel.db", "mysql://x", 6, r"store\.url: must be sqlite:///FILE or postgresql"),
+        ("[sensor.source]", "[sensor.source]\nmains_hz = 50", 28, r"mains_hz: unknown key$"),
     ],
 )
 def test_a_bad_setting_is_one_line_with_file_line_and_key(
@@ -163,7 +164,7 @@ def test_a_file_that_is_not_text_or_not_there_is_refused(tmp_path: Path) -> None
     (tmp_path / "ginnel.toml").write_bytes(b"\xff\xfe\x00")
     with pytest.raises(ConfigError, match="not UTF-8"):
         load_settings(tmp_path / "ginnel.toml")
-    with pytest.raises(ConfigError, match=r"none\.toml: cannot be read: No such file"):
+    with pytest.raises(ConfigError, match=r"none\.toml: is not there: make one with `ginnel init`"):
         load_settings(tmp_path / "none.toml")
 
 
