@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from ginnel.passages.explain import Explained
+from ginnel.passages.explained import Explained
 from ginnel.words import Direction
 
 #: Difference of scores, nats, that makes the odds for a direction e to 1.

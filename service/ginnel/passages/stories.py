@@ -7,7 +7,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ginnel.passages.explain import LEAST_SCORE, Explained
+from ginnel.passages.explain import LEAST_SCORE
+from ginnel.passages.explained import Explained
 from ginnel.passages.site import NEPERS_PER_DB, Site
 from ginnel.words import Story
 

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from ginnel.passages.explain import Explained
+from ginnel.passages.explained import Explained
 from ginnel.passages.fit import Fit
 from ginnel.passages.measure import measure
 from ginnel.passages.mover import Mover

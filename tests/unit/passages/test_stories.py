@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from ginnel.doppler.frames import plan_frames
-from ginnel.passages.explain import Explained
+from ginnel.passages.explained import Explained
 from ginnel.passages.fit import Fit
 from ginnel.passages.mover import Mover
 from ginnel.passages.site import N_ZONES, NEPERS_PER_DB, Site

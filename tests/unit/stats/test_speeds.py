@@ -46,7 +46,7 @@ def test_iowa_spot_speed_study() -> None:
 
 
 def test_uthm_spot_speed_study() -> None:
-    # UTHM BFC 32302, 'Example of Spot Speed Study': classes of 5 km/h, here at their middles
+    # A published spot-speed table of 130 vehicles in classes of 5 km/h, here at their middles; sums by hand
     middles = np.repeat(np.arange(42.0, 113.0, 5.0), [5, 8, 12, 10, 15, 21, 16, 11, 10, 4, 5, 4, 5, 1, 3])
     summary = summarise_speeds(middles)
     assert summary.n == 130
@@ -79,7 +79,7 @@ def test_quantiles_agree_with_the_definition(
 
 
 def test_wardrops_two_speeds() -> None:
-    # NPTEL Lecture 2: 12 vehicles a minute at 10 m/s and 12 at 20 m/s
+    # Wardrop's two streams: 12 vehicles a minute at 10 m/s and 12 at 20 m/s; harmonic mean by hand
     speed_mps = np.repeat([10.0, 20.0], 12)
     summary = summarise_speeds(speed_mps)
     assert summary.mean_mps == pytest.approx(15.0)
