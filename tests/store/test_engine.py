@@ -159,6 +159,6 @@ def overfill(store: Store) -> None:
 
 
 def test_a_store_that_may_not_grow_says_that_the_disk_is_full(tmp_path: Path) -> None:
-    with open_store(f"sqlite:///{tmp_path / 'ginnel.db'}", create=True) as store:
-        with pytest.raises(StoreError, match="the disk is full"):
-            overfill(store)
+    url = f"sqlite:///{tmp_path / 'ginnel.db'}"
+    with open_store(url, create=True) as store, pytest.raises(StoreError, match="the disk is full"):
+        overfill(store)
