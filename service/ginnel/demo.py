@@ -10,8 +10,10 @@ import multiprocessing
 import signal
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import FIRST_COMPLETED, Future, ProcessPoolExecutor, wait
+from contextlib import contextmanager
 from dataclasses import dataclass
 from multiprocessing.queues import SimpleQueue
+from multiprocessing.synchronize import Event
 from pathlib import Path
 from typing import TypeAlias, TypeVar
 
@@ -74,6 +76,7 @@ _Told: TypeAlias = "SimpleQueue[float]"
 _Result = TypeVar("_Result")
 
 _told: _Told | None = None  # in a working process, where progress is told to
+_stop: Event | None = None  # and whether what it does is wanted no longer
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -125,8 +128,10 @@ def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
     listened_s = dict.fromkeys(sensors, 0.0)
     spawn = multiprocessing.get_context("spawn")
     told: _Told = spawn.SimpleQueue()
+    stop = spawn.Event()
     with (
-        ProcessPoolExecutor(2, mp_context=spawn, initializer=_begin, initargs=(told,)) as pool,
+        ProcessPoolExecutor(2, mp_context=spawn, initializer=_begin, initargs=(told, stop)) as pool,
+        _stopping(pool, stop),
         open_store(settings.store.url, create=True) as store,
     ):
         put_site(store, settings.site.to_site())
@@ -184,14 +189,27 @@ def _read(sensor: Sensor, recorded: RecordedSpan) -> tuple[Passage, ...]:
     return find_passages(sensor, recorded, lambda done_s: _tell(CHAIN_WORK * done_s))
 
 
-def _begin(told: _Told) -> None:
+@contextmanager
+def _stopping(pool: ProcessPoolExecutor, stop: Event) -> Iterator[None]:
+    """Let the working processes stop soon when something fails or Ctrl-C comes; the pool waits for them."""
+    try:
+        yield
+    except BaseException:
+        stop.set()
+        pool.shutdown(cancel_futures=True)
+        raise
+
+
+def _begin(told: _Told, stop: Event) -> None:
     """Begin a working process: how to tell progress, and to end at once and silently on Ctrl-C."""
-    global _told
-    _told = told
+    global _told, _stop
+    _told, _stop = told, stop
     signal.signal(signal.SIGINT, signal.SIG_DFL)
 
 
 def _tell(done: float) -> None:
+    if _stop is not None and _stop.is_set():
+        raise GinnelError("the demo was stopped")
     if _told is not None:
         _told.put(done)
 

@@ -62,3 +62,22 @@ def test_the_demo_does_not_write_over_other_settings(tmp_path: Path) -> None:
     assert done.returncode == 1
     assert "give the demo a folder of its own" in done.stderr
     assert (tmp_path / "ginnel.toml").read_text("utf-8") == "# mine\n"
+
+
+def test_ctrl_c_ends_the_demo_soon_and_quietly(tmp_path: Path) -> None:
+    deadline = time.monotonic() + 60
+    with subprocess.Popen(
+        command("demo", "--dir", str(tmp_path / "morning"), "--no-serve"),
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+    ) as demo:
+        # the first capture has begun, so both working processes are busy
+        while not list(tmp_path.glob("morning/captures/*/*.wav")):
+            assert time.monotonic() < deadline
+            assert demo.poll() is None
+            time.sleep(0.01)
+        demo.send_signal(signal.SIGINT)
+        # what is left would take ten times as long
+        out, err = demo.communicate(timeout=15)
+    assert (demo.returncode, out, err.strip()) == (1, "", "Aborted!")
