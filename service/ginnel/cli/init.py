@@ -50,6 +50,6 @@ def machine_zone() -> str:
     target = Path("/etc/localtime")
     if target.is_symlink():
         _, found, zone = str(target.resolve()).partition("/zoneinfo/")
-        if found and "/" in zone:
+        if found and "/" in zone and zone != "Etc/UTC":
             return zone
     return "UTC"
