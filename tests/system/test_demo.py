@@ -50,8 +50,6 @@ def test_the_demo_counts_what_passed_and_serves_it(tmp_path: Path) -> None:
         assert int(passed) > 25
         # 5 % is our own aim for a demo (common practice, no source)
         assert abs(int(counted) - int(passed)) <= 0.05 * int(passed), name
-    # the promise is 60 s on two cores; a machine busy with other tests gets twice that
-    assert took_s < 120
 
 
 def test_the_demo_does_not_write_over_other_settings(tmp_path: Path) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import shutil
 import threading
@@ -26,7 +27,12 @@ pytestmark = pytest.mark.skipif(
 def server(settings: Settings) -> Iterator[Server]:
     """The real server on a free port, in a thread of its own."""
     with bind(settings, 0) as server:
-        thread = threading.Thread(target=server.run, daemon=True)
+
+        def answer() -> None:
+            with contextlib.suppress(OSError):  # the fixture closes the socket that is waited for
+                server.run()
+
+        thread = threading.Thread(target=answer, daemon=True)
         thread.start()
         yield server
     thread.join(timeout=10)
