@@ -45,7 +45,7 @@ def test_iowa_spot_speed_study() -> None:
     assert (summary.p15_mps, summary.p50_mps, summary.p85_mps) == (24, 30, 36)
 
 
-def test_uthm_spot_speed_study() -> None:
+def test_a_published_spot_speed_study_of_130_vehicles() -> None:
     # A published spot-speed table of 130 vehicles in classes of 5 km/h, here at their middles; sums by hand
     middles = np.repeat(np.arange(42.0, 113.0, 5.0), [5, 8, 12, 10, 15, 21, 16, 11, 10, 4, 5, 4, 5, 1, 3])
     summary = summarise_speeds(middles)
