@@ -40,7 +40,8 @@ class Body:
     reach_m: float  # how far along the path it may be heard
     same_within_m: float  # crossings closer than this belong to one body
     longest_m: float  # no body is longer
-    bend_ratio: float  # a passage is heard this near to the sensor, in nearest distances
+    bend_ratio: float  # a line heard this near to the sensor, in nearest distances, shows its bend
+    may_turn: bool  # walkers do; vehicles on a road hardly ever
     claim_db: float  # how far above its level a mover's line may be and still be its own
     # Prior spreads, weighed against evidence that model errors limit (see ``fit.SATURATION``):
     zone_level_sd: float  # log power in one zone against the nominal curve
@@ -62,6 +63,7 @@ WALKER = Body(
     same_within_m=0.95,
     longest_m=1.2,
     bend_ratio=1.0,
+    may_turn=True,
     claim_db=3.0,
     zone_level_sd=1.5 * NEPERS_PER_DB,
     level_slope_sd=0.3,
@@ -80,6 +82,7 @@ VEHICLE = Body(
     same_within_m=12.0,
     longest_m=18.75,  # the longest road train, Council Directive 96/53/EC, from memory
     bend_ratio=0.4,
+    may_turn=False,
     claim_db=10.0,
     zone_level_sd=4.0 * NEPERS_PER_DB,
     level_slope_sd=0.8,

@@ -31,6 +31,8 @@ _STRONG_PART = 0.2
 _FAINT_SHARE, _PIECE_SHARE = 0.12, 0.3
 #: Legs and arms: mostly heard and crossing with their body, fainter, and slower or faster than it.
 _LIMB_TOGETHER, _LIMB_S, _LIMB_DB, _LIMB_SPEED = 0.6, 1.5, 6.0, 0.25
+#: The same mover from behind: crossing at the same place, at the same speed, this much fainter.
+_BEHIND_OFFSETS, _BEHIND_DB = 1.0, 6.0
 #: Slower than this, both ways at once: someone who stands and sways.
 _LOITER_MPS = 0.6
 
@@ -52,7 +54,7 @@ def tell(site: Site, movers: list[Explained]) -> list[Told]:
         if any(_loiter_together(one, other) for other in bodies):
             stories[id(one)] = Story.FIDGET
     passing = [one for one in bodies if stories[id(one)] is Story.PASSAGE]
-    for first, second in _turning_pairs(site, passing):
+    for first, second in _turning_pairs(site, passing) if site.body.may_turn else ():
         stories[id(first)] = stories[id(second)] = Story.TURN_BACK
     return [
         Told(one, stories[id(one)], any(other is not one and _together(one, other) for other in bodies))
@@ -115,7 +117,7 @@ def _is_leftover(site: Site, weak: Explained, strong: Explained) -> bool:
     """A short or faint piece that is only heard while a much stronger mover is."""
     path_m = weak.far_m - weak.near_m
     inside = strong.first_frame - 5 <= weak.first_frame and weak.last_frame <= strong.last_frame + 5
-    if _is_limb(weak, strong):
+    if _is_limb(weak, strong) or _is_behind(site, weak, strong):
         return True
     share = weak.fit.score / strong.fit.score
     return inside and (share < _FAINT_SHARE or (share < _PIECE_SHARE and path_m < 2 * _least_path_m(site)))
@@ -130,6 +132,17 @@ def _is_limb(weak: Explained, strong: Explained) -> bool:
         and abs(weak.mover.crossed_s - strong.mover.crossed_s) < _LIMB_S
         and weak.snr_db < strong.snr_db - _LIMB_DB
         and abs(math.log(weak.mean_speed_mps / strong.mean_speed_mps)) > _LIMB_SPEED
+    )
+
+
+def _is_behind(site: Site, weak: Explained, strong: Explained) -> bool:
+    """Whether a faint mover is a strong one as the back of the beam hears it, going the other way."""
+    apart_m = abs(weak.mover.crossed_s - strong.mover.crossed_s) * strong.mover.speed_mps
+    return (
+        weak.mover.sign != strong.mover.sign
+        and apart_m < _BEHIND_OFFSETS * site.offset_m + site.body.length_m
+        and weak.snr_db < strong.snr_db - _BEHIND_DB
+        and abs(math.log(weak.mean_speed_mps / strong.mean_speed_mps)) < _SAME_SPEED
     )
 
 
@@ -176,7 +189,7 @@ def _line_reach_m(site: Site) -> float:
     x = np.linspace(0.1, 20.0, 200)
     well_heard = x[site.nominal_level(x) > _WELL_HEARD]
     nearest_m = float(well_heard.min()) if len(well_heard) else 0.0
-    return max(site.body.bend_ratio * site.offset_m, 1.5 * nearest_m)
+    return max(site.offset_m, 1.5 * nearest_m)
 
 
 def _together(one: Explained, other: Explained) -> bool:
