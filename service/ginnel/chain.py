@@ -26,7 +26,7 @@ _SEAM_S = 1.0
 
 
 class Chain:
-    """One span of one sensor. ``push`` and ``finish`` give passages in order of their crossing.
+    """One span of one sensor. ``push`` and ``finish`` give the passages of each stretch of activity in order.
 
     The size of the blocks pushed in never changes what comes out.
     """
@@ -42,12 +42,12 @@ class Chain:
         self._sample_rate_hz = sample_rate_hz
         self._started_us = started_us
         self._n_samples = 0
-        self._last_crossed_us = started_us - US_PER_S
+        self._crossed_us: deque[int] = deque(maxlen=64)
         self._given: deque[tuple[float, int]] = deque(maxlen=16)
 
     @property
     def settled_us(self) -> int:
-        """Passages that cross before this have all been given out."""
+        """Stretches of activity that began before this have all been read."""
         return min(self._time_us(self._activity.settled_frame_idx), self.listened_until_us)
 
     @property
@@ -106,9 +106,10 @@ class Chain:
         measured = measure(one)
         started_us = self._time_us(stretch.first_frame_idx + one.first_frame)
         ended_us = self._time_us(stretch.first_frame_idx + one.last_frame)
-        # Two movers never share a sample: the later one gives way.
-        crossed_us = max(self._time_us(crossed_frame), self._last_crossed_us + 1)
-        self._last_crossed_us = crossed_us
+        crossed_us = self._time_us(crossed_frame)
+        while crossed_us in self._crossed_us:  # a passage's key: two never share a moment
+            crossed_us += 1
+        self._crossed_us.append(crossed_us)
         flags = set()
         if stretch.is_clipped[one.first_frame : one.last_frame + 1].any():
             flags.add(Flag.CLIPPED)

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import contextlib
+import errno
 import importlib
+import os
 import sys
 from typing import Any
 
@@ -42,10 +45,17 @@ class _LazyGroup(click.Group):
     def main(self, *args: Any, **kwargs: Any) -> Any:
         """Run; what the system refuses and no room foresaw is a line too."""
         try:
-            return super().main(*args, **kwargs)
+            try:
+                return super().main(*args, **kwargs)
+            finally:
+                sys.stdout.flush()  # here, where a failure still gets its line
         except OSError as exc:
             what = exc.filename or "the output"
-            click.echo(f"ginnel: {what}: {exc.strerror or exc}", err=True)
+            if exc.errno != errno.EPIPE:  # whoever reads has had enough, as `head` does
+                click.echo(f"ginnel: {what}: {exc.strerror or exc}", err=True)
+            with contextlib.suppress(OSError, ValueError):
+                # what is still buffered has nowhere to go; the interpreter would try, and fail, at its end
+                os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
             sys.exit(1)
 
     def invoke(self, ctx: click.Context) -> object:

@@ -67,7 +67,7 @@ class ActivityStage:
 
     @property
     def settled_frame_idx(self) -> float:
-        """Movers that cross before this frame have been handed on."""
+        """Stretches that begin before this frame have been handed on."""
         if self._started is None:  # a stretch that begins now reaches back this far
             return float(self._n_seen - self._window - self._lead)
         return max(self._own_first, float(self._started - self._lead))
