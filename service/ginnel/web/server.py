@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import logging
 import socket
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
@@ -56,6 +57,8 @@ def bind(settings: Settings, port: int) -> Server:
     from ginnel.web.app import create_app
 
     app = create_app(settings)
+    # a request that waits for a thread a moment is no news to whoever started the dashboard
+    logging.getLogger("waitress.queue").setLevel(logging.ERROR)
     # a socket of our own: waitress leaves its open when the port is taken
     taken = socket.socket(socket.AF_INET, socket.SOCK_STREAM)
     try:
