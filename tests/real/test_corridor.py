@@ -7,6 +7,7 @@ one way, then 25 the other way. Only the echoes are simulated: real people speed
 from __future__ import annotations
 
 import gzip
+from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -70,8 +71,20 @@ def people(trajectories: Path) -> list[Person]:
 
 @dataclass(frozen=True)
 class Watched:
+    channels: Channels
     passages: list[Passage]
     pairs: list[tuple[Person, Passage]]
+
+    @property
+    def table(self) -> str:
+        errors = self.speed_errors
+        right = sum(person.direction is passage.direction for person, passage in self.pairs)
+        return (
+            f"\n{self.channels}: 50 people, {len(self.passages)} passages, {len(self.pairs)} matched;"
+            f" direction right {right};"
+            f" speed bias {100 * errors.mean():+.1f} %, mean error {100 * np.abs(errors).mean():.1f} %,"
+            f" within 5 %: {np.sum(np.abs(errors) <= 0.05)}, worst {100 * np.abs(errors).max():.1f} %"
+        )
 
     @property
     def speed_errors(self) -> FloatArray:
@@ -120,15 +133,7 @@ def watched(request: pytest.FixtureRequest, people: list[Person]) -> Watched:
     )
     matched = zip(*linear_sum_assignment(np.minimum(apart_s, 10 * WITHIN_S)), strict=True)
     pairs = [(people[i], passages[j]) for i, j in matched if apart_s[i, j] <= WITHIN_S]
-    result = Watched(passages, pairs)
-    errors = result.speed_errors
-    print(
-        f"\n{request.param}: {len(people)} people, {len(passages)} passages, {len(pairs)} matched;"
-        f" direction right {sum(p.direction is q.direction for p, q in pairs)};"
-        f" speed bias {100 * errors.mean():+.1f} %, mean error {100 * np.abs(errors).mean():.1f} %,"
-        f" within 5 %: {np.sum(np.abs(errors) <= 0.05)}, worst {100 * np.abs(errors).max():.1f} %"
-    )
-    return result
+    return Watched(request.param, passages, pairs)
 
 
 def test_fifty_people_are_fifty_passages_within_one(watched: Watched, people: list[Person]) -> None:
@@ -137,7 +142,8 @@ def test_fifty_people_are_fifty_passages_within_one(watched: Watched, people: li
     assert len(watched.pairs) >= 49
 
 
-def test_every_direction_is_right(watched: Watched) -> None:
+def test_every_direction_is_right(watched: Watched, record_property: Callable[[str, object], None]) -> None:
+    record_property("table", watched.table)
     assert all(person.direction is passage.direction for person, passage in watched.pairs)
 
 

@@ -6,6 +6,7 @@ measured well away from the sensor. The mounting was not recorded: a lane's widt
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -44,6 +45,7 @@ class Vehicle:
 class Roadside:
     vehicles: list[Vehicle]
     others: list[tuple[str, Passage]]
+    table: str
 
 
 @pytest.fixture(scope="module")
@@ -73,25 +75,28 @@ def roadside(recordings: Path, tmp_path_factory: pytest.TempPathFactory) -> Road
             speed_mps = float(label["speed_ms_at_24.125GHz"])
             vehicles.append(Vehicle(path.name, label["target"], direction, crossed_s, speed_mps, best))
         others += [(path.name, passage) for passage in left]
-    _print(vehicles, others)
-    return Roadside(vehicles, others)
+    return Roadside(vehicles, others, _table(vehicles, others))
 
 
-def _print(vehicles: list[Vehicle], others: list[tuple[str, Passage]]) -> None:
-    print("\nfile | vehicle | direction | label s | found s | label m/s | found m/s | error %")
+def _table(vehicles: list[Vehicle], others: list[tuple[str, Passage]]) -> str:
+    lines = ["\nfile | vehicle | direction | label s | found s | label m/s | found m/s | error %"]
     for one in vehicles:
         if one.passage is None or one.passage.speed_mps is None:
-            print(f"{one.file} | {one.target} | {one.direction} | {one.crossed_s} | not found")
+            lines.append(f"{one.file} | {one.target} | {one.direction} | {one.crossed_s} | not found")
             continue
-        print(
+        lines.append(
             f"{one.file} | {one.target} | {one.direction} | {one.crossed_s}"
             f" | {since_start_s(one.passage.crossed_us):.2f} | {one.speed_mps} | {one.passage.speed_mps:.2f}"
             f" | {100 * (one.passage.speed_mps / one.speed_mps - 1):+.1f}"
         )
-    print(f"other passages: {[(name, since_start_s(p.crossed_us)) for name, p in others]}")
+    lines.append(f"other passages: {[(name, since_start_s(p.crossed_us)) for name, p in others]}")
+    return "\n".join(lines)
 
 
-def test_each_labelled_vehicle_is_one_passage_the_right_way_at_the_right_time(roadside: Roadside) -> None:
+def test_each_labelled_vehicle_is_one_passage_the_right_way_at_the_right_time(
+    roadside: Roadside, record_property: Callable[[str, object], None]
+) -> None:
+    record_property("table", roadside.table)
     assert len(roadside.vehicles) == 15
     assert [one.target for one in roadside.vehicles if one.passage is None] == []
 

@@ -1,0 +1,17 @@
+"""Tables that tests hand in as property `table` are printed at the end of a run, also by parallel ones."""
+
+from __future__ import annotations
+
+import pytest
+
+
+def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter) -> None:
+    tables = {
+        str(value)
+        for reports in terminalreporter.stats.values()
+        for report in reports
+        for name, value in getattr(report, "user_properties", ())
+        if name == "table"
+    }
+    for table in sorted(tables):
+        terminalreporter.write_line(table)
