@@ -32,8 +32,7 @@ def test_the_tour_works_as_typed(tmp_path: Path) -> None:
     tour = subprocess.Popen(
         ["bash", "-c", script],
         cwd=tmp_path,
-        env=environment()
-        | {"PATH": f"{bin_folder}{os.pathsep}{os.environ['PATH']}", "PYTHONUNBUFFERED": "1"},
+        env=environment() | {"PATH": path, "PYTHONUNBUFFERED": "1"},
         stdout=subprocess.PIPE,
         stderr=subprocess.STDOUT,
         text=True,
