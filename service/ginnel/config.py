@@ -8,6 +8,7 @@ Relative paths in the file are meant from the file's own folder.
 
 from __future__ import annotations
 
+import ipaddress
 import json
 import os
 import tomllib
@@ -84,6 +85,36 @@ class StoreSettings(_Section):
     """``[store]``: where the log is kept."""
 
     url: str = Field(default="sqlite:///ginnel.db", pattern=r"^(sqlite|postgresql(\+psycopg)?)://")
+
+
+class WebSettings(_Section):
+    """``[web]``: how the dashboard is reached, and how it writes numbers."""
+
+    address: str = "127.0.0.1"
+    port: int = Field(default=8470, ge=0, le=65535)
+    public_url: str | None = Field(default=None, pattern=r"^https?://[A-Za-z0-9.\[\]:-]+(/[^?#\s]*)?$")
+    units: Literal["m/s", "km/h", "mph"] = "m/s"
+    locale: str = "en"
+    speed_limit: float | None = Field(default=None, gt=0, le=400)  # in the unit above
+
+    @field_validator("address")
+    @classmethod
+    def _an_address(cls, text: str) -> str:
+        try:
+            ipaddress.ip_address(text)
+        except ValueError as exc:
+            raise ValueError("not an IP address such as 127.0.0.1 or 0.0.0.0") from exc
+        return text
+
+    @field_validator("locale")
+    @classmethod
+    def _known_locale(cls, name: str) -> str:
+        from babel import Locale, UnknownLocaleError
+
+        try:
+            return str(Locale.parse(name.replace("-", "_")))
+        except (UnknownLocaleError, ValueError) as exc:
+            raise ValueError("not a locale such as en-IE or de") from exc
 
 
 class MountingChange(_Section):
@@ -217,6 +248,7 @@ class Settings(BaseSettings):
 
     site: SiteSettings = SiteSettings()
     store: StoreSettings = StoreSettings()
+    web: WebSettings = WebSettings()
     sensor: Annotated[tuple[SensorSettings, ...], _Listed] = ()
 
     @field_validator("sensor")
