@@ -13,6 +13,7 @@ from ginnel.errors import StoreError
 from ginnel.store.codes import PassageCodes, encode
 from ginnel.store.engine import Store
 from ginnel.store.readings import mounting_row_id, reading_row_id, sensor_row_id
+from ginnel.store.stale import mark_stale
 from ginnel.store.tables import PassageRow, SiteRow, SpanRow
 from ginnel.times import utc_text
 from ginnel.words import US_PER_S, Passage, Sensor, Site, Span
@@ -91,6 +92,9 @@ def record_span(
         if len(overlapping) == 1 and stored == new and _is_row_of(overlapping[0], span, reading_id):
             return replace(change, already_stored=True)
 
+        # a span that covers others covers their time too; their crossings may lie just outside it
+        crossings_us = [row[0] for row in stored | new if row[0] is not None]
+        mark_stale(connection, sensor_id, span.started_us, span.ended_us, crossings_us)
         if overlapping:
             connection.execute(delete(SpanRow).where(SpanRow.id.in_([old.id for old in overlapping])))
             connection.execute(delete(PassageRow).where(*_of_span(sensor_id, span)))
@@ -150,6 +154,8 @@ def extend_span(
             )
         elif known.ended_us < span.ended_us:
             connection.execute(update(SpanRow).where(SpanRow.id == known.id).values(ended_us=span.ended_us))
+        grown_from_us = span.started_us if known is None else min(known.ended_us, span.ended_us)
+        mark_stale(connection, sensor_id, grown_from_us, span.ended_us, [row.crossed_us for row in rows])
         if not rows:
             return SpanChange()
         added = len(rows) - len(_taken_crossings(connection, sensor_id, rows))

@@ -9,6 +9,10 @@ lies in the span in which it began to be heard. This leaves the largest table wi
 key, and no other. Measures are whole numbers in small units (see ``codes.py``), which makes rows
 small and equal on every database. The speed band is not stored either: it follows from the speed
 and the sensor's present bands.
+
+Roll-ups (``hour_...``) say again what spans and passages say, by UTC hour. Whatever changes spans or
+passages marks the hours that it touches as stale in the same transaction, so a roll-up that is not
+marked is right.
 """
 
 from __future__ import annotations
@@ -21,6 +25,7 @@ from sqlalchemy import (
     Double,
     ForeignKey,
     Integer,
+    LargeBinary,
     MetaData,
     SmallInteger,
     String,
@@ -122,6 +127,10 @@ class SpanRow(Base):
     ended_us: Mapped[int] = mapped_column(BigInteger)
     sample_rate_hz: Mapped[float]
     clock_trusted: Mapped[bool]
+    # of live listening; NULL, or 0, for recordings
+    drift_ppm: Mapped[float | None]  # of the wall clock against the sample clock; positive: samples come slow
+    dropped_samples: Mapped[int] = mapped_column(BigInteger, server_default="0")
+    redated_by_us: Mapped[int | None] = mapped_column(BigInteger)  # moved so far once the clock was set
 
 
 class PassageRow(Base):
@@ -151,3 +160,105 @@ class PassageRow(Base):
     speed_umps: Mapped[int | None] = mapped_column(Integer)
     speed_se_umps: Mapped[int | None] = mapped_column(Integer)
     snr_mdb: Mapped[int | None] = mapped_column(Integer)
+
+
+class HourRow(Base):
+    """How much of a UTC hour a sensor listened to. No row: nothing."""
+
+    __tablename__ = "hour_listened"
+    __table_args__ = (
+        CheckConstraint("listened_us BETWEEN 0 AND 3600000000", name="listened_us"),
+        {"sqlite_with_rowid": False},
+    )
+
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"), primary_key=True)
+    hour: Mapped[int] = mapped_column(Integer, primary_key=True)  # whole hours since 1970 UTC
+    listened_us: Mapped[int] = mapped_column(BigInteger)
+    is_final: Mapped[bool]  # its passages are gone by retention: never rebuilt
+
+
+class HourPassagesRow(Base):
+    """Passages of a sensor, a UTC hour, a story and a direction. No row: none."""
+
+    __tablename__ = "hour_passages"
+    __table_args__ = (
+        CheckConstraint("measured BETWEEN 0 AND count", name="measured"),
+        CheckConstraint("story IN (0, 1, 2)", name="story"),
+        CheckConstraint("direction IN (0, 1, 2)", name="direction"),
+        {"sqlite_with_rowid": False},
+    )
+
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"), primary_key=True)
+    hour: Mapped[int] = mapped_column(Integer, primary_key=True)
+    story: Mapped[int] = mapped_column(SmallInteger, primary_key=True)
+    direction: Mapped[int] = mapped_column(SmallInteger, primary_key=True)
+    count: Mapped[int] = mapped_column(Integer)
+    measured: Mapped[int] = mapped_column(Integer)  # those with a speed; what follows is theirs
+    speed_sum_mmps: Mapped[int] = mapped_column(BigInteger)
+    speed_square_sum_mm2ps2: Mapped[int] = mapped_column(BigInteger)
+    slowness_sum_uspm: Mapped[int] = mapped_column(BigInteger)  # microseconds per metre
+    histogram: Mapped[bytes] = mapped_column(LargeBinary)  # see rollup.py
+
+
+class StaleHourRow(Base):
+    """An hour whose roll-up may not agree with spans and passages (any more)."""
+
+    __tablename__ = "hour_stale"
+    __table_args__ = ({"sqlite_with_rowid": False},)
+
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"), primary_key=True)
+    hour: Mapped[int] = mapped_column(Integer, primary_key=True)
+
+
+class HealthRow(Base):
+    """How well a sensor heard in the minute before a moment, and how its computer did."""
+
+    __tablename__ = "health"
+    __table_args__ = ({"sqlite_with_rowid": False},)
+
+    sensor_id: Mapped[int] = mapped_column(ForeignKey("sensor.id"), primary_key=True)
+    at_us: Mapped[int] = mapped_column(BigInteger, primary_key=True)
+    listened_ms: Mapped[int] = mapped_column(Integer)
+    level_mdb: Mapped[int | None] = mapped_column(Integer)
+    noise_mdb: Mapped[int | None] = mapped_column(Integer)
+    hum_mdb: Mapped[int | None] = mapped_column(Integer)
+    lamp_mdb: Mapped[int | None] = mapped_column(Integer)
+    lamp_mmps: Mapped[int | None] = mapped_column(Integer)
+    clipped_ppm: Mapped[int | None] = mapped_column(Integer)
+    dropped_samples: Mapped[int] = mapped_column(BigInteger)
+    lag_ms: Mapped[int | None] = mapped_column(Integer)
+    disk_free_mb: Mapped[int | None] = mapped_column(Integer)
+    disk_size_mb: Mapped[int | None] = mapped_column(Integer)
+    resident_mb: Mapped[int | None] = mapped_column(Integer)
+    temperature_mdegc: Mapped[int | None] = mapped_column(Integer)
+
+
+class ConditionRow(Base):
+    """Something that was wrong, from when to when, as it was told."""
+
+    __tablename__ = "condition"
+    __table_args__ = (
+        CheckConstraint("severity IN ('warning', 'failure')", name="severity"),
+        CheckConstraint("cleared_us >= raised_us", name="order"),
+    )
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    sensor_id: Mapped[int | None] = mapped_column(ForeignKey("sensor.id"))  # NULL: all of them
+    kind: Mapped[str] = mapped_column(String(32))
+    severity: Mapped[str] = mapped_column(String(8))
+    raised_us: Mapped[int] = mapped_column(BigInteger)
+    cleared_us: Mapped[int | None] = mapped_column(BigInteger)  # NULL: it still is
+    sentence: Mapped[str] = mapped_column(String)
+    advice: Mapped[str] = mapped_column(String)
+
+
+class JobRow(Base):
+    """How far a job of housekeeping got."""
+
+    __tablename__ = "job"
+
+    name: Mapped[str] = mapped_column(String(32), primary_key=True)
+    done_until_us: Mapped[int | None] = mapped_column(BigInteger)  # what is before this is done
+    ran_us: Mapped[int] = mapped_column(BigInteger)  # last tried
+    outcome: Mapped[str] = mapped_column(String)  # a line about the last try
+    failed: Mapped[bool]
