@@ -262,3 +262,35 @@ class JobRow(Base):
     ran_us: Mapped[int] = mapped_column(BigInteger)  # last tried
     outcome: Mapped[str] = mapped_column(String)  # a line about the last try
     failed: Mapped[bool]
+
+
+class UserRow(Base):
+    """Somebody who may see the dashboard."""
+
+    __tablename__ = "user_account"  # `user` is a word of SQL
+    __table_args__ = (CheckConstraint("role IN ('look', 'edit')", name="role"),)
+
+    name: Mapped[str] = mapped_column(String(64), primary_key=True)
+    role: Mapped[str] = mapped_column(String(8))
+    password_hash: Mapped[str] = mapped_column(String)
+
+
+class TokenRow(Base):
+    """What checks the token of a program."""
+
+    __tablename__ = "user_token"
+
+    user_name: Mapped[str] = mapped_column(String(64), ForeignKey("user_account.name"), primary_key=True)
+    label: Mapped[str] = mapped_column(String(64), primary_key=True)
+    digest: Mapped[str] = mapped_column(String(64), unique=True)
+    made_us: Mapped[int] = mapped_column(BigInteger)
+
+
+class WebKeyRow(Base):
+    """The key that signs sessions: one row, made with the first user."""
+
+    __tablename__ = "web_key"
+    __table_args__ = (CheckConstraint("id = 1", name="one_row"),)
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True, autoincrement=False)
+    secret: Mapped[bytes] = mapped_column(LargeBinary)
