@@ -5,12 +5,14 @@ Expected values are the contract's own example (design, section 6) and hand calc
 
 from __future__ import annotations
 
+import re
 from dataclasses import fields
 from pathlib import Path
 
 import pytest
 
-from ginnel.config import Settings, default_config_text, load_settings
+from ginnel.config import Settings, SourceKind, default_config_text, load_settings
+from ginnel.config.source import KEYS
 from ginnel.errors import ConfigError
 from ginnel.words import Aspect, Channels, Sensor
 
@@ -99,15 +101,57 @@ def test_the_generated_file_gives_the_defaults(tmp_path: Path) -> None:
             assert getattr(made, field.name) == getattr(default, field.name)
 
 
-def test_the_commented_keys_of_the_generated_file_can_all_be_uncommented(tmp_path: Path) -> None:
+@pytest.mark.parametrize("kind", list(SourceKind))
+def test_the_commented_keys_of_the_generated_file_can_all_be_uncommented(
+    tmp_path: Path, kind: SourceKind
+) -> None:
     text = default_config_text()
     head, _, body = text.partition("[site]")
+    body, mark, source = body.partition("[sensor.source]")
     uncommented = "\n".join(
         line[2:] if line.startswith("# ") and not line.startswith("# swap_iq") else line
         for line in body.splitlines()
     )
-    settings = settings_from(head + "[site]" + uncommented, tmp_path)
+    lines = dict(re.findall(r"^(?:# )?([a-z_]+)( = \S.*)$", source, re.MULTILINE))
+    lines |= {"kind": f' = "{kind.value}"', "after": ' = "archive"'}
+    keys = [key + value for key, value in lines.items() if key in {"kind", *KEYS[kind]}]
+    assert len(keys) == 1 + len(KEYS[kind])
+    settings = settings_from("\n".join([head + "[site]" + uncommented, mark, *keys]), tmp_path)
     assert settings.sensor[0].mounting_change[0].height_m == 2.6
+    assert settings.sensor[0].source.kind is kind
+
+
+@pytest.mark.parametrize(
+    ("source", "message"),
+    [
+        ('kind = "tcp"\nhost = "10.0.0.2"\nport = 7000', r'line 27: .*kind = "tcp" needs rate_hz'),
+        ('kind = "pipe"\nrate_hz = 8000', r'kind = "pipe" needs path'),
+        ('kind = "sound"\nrate_hz = 8000\nport = 1', r'port does not go with kind = "sound"'),
+        ('kind = "pipe"\npath = "-"\nrate_hz = "8 kHz"', r"line 30: .*rate_hz: must be a valid number"),
+        ('kind = "pipe"\npath = "-"\nrate_hz = 8', r"rate_hz: must be greater than or equal to 1000"),
+        ('kind = "folder"\nafter = "archive"', r'after = "archive" and archive \(a folder\) go together'),
+        ('kind = "folder"\nafter = "burn"', r"after: must be 'keep', 'archive' or 'delete'"),
+        ('kind = "pipe"\npath = "-"\nrate_hz = 8000\nsample_type = "pcm"', r"sample_type: must be r or c"),
+        ('kind = "pipe"\npath = "-"\nrate_hz = 8000\nsample_type = "ci8"', r"it must begin with r"),
+    ],
+)
+def test_a_source_is_given_what_its_kind_needs_and_nothing_else(
+    tmp_path: Path, source: str, message: str
+) -> None:
+    text = CONTRACT.replace('kind = "folder"\npath = "captures"', source)
+    with pytest.raises(ConfigError, match=message):
+        settings_from(text, tmp_path)
+
+
+def test_paths_of_the_source_and_of_listening_start_at_the_file(tmp_path: Path) -> None:
+    source = 'kind = "folder"\npath = "in"\nafter = "archive"\narchive = "heard"'
+    settings = settings_from(CONTRACT.replace('kind = "folder"\npath = "captures"', source), tmp_path)
+    assert settings.sensor[0].source.path == str(tmp_path / "in")
+    assert settings.sensor[0].source.archive == str(tmp_path / "heard")
+    assert settings.listen.state == str(tmp_path / "listening")
+    source = 'kind = "pipe"\npath = "-"\nrate_hz = 8000'
+    settings = settings_from(CONTRACT.replace('kind = "folder"\npath = "captures"', source), tmp_path)
+    assert settings.sensor[0].source.path == "-"
 
 
 @pytest.mark.parametrize(

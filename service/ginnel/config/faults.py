@@ -15,6 +15,7 @@ _ENTRY = re.compile(r"^\s*([A-Za-z0-9_\-\"']+)\s*=")
 #: What the patterns of the settings mean, by key.
 _PATTERNS = {
     "name": "must be letters, digits, dot, dash and underscore, and begin with a letter or digit",
+    "sample_type": "must be r or c, then i8, u8, i16, i24, i32, f32 or f64, then _le or _be, as in ri16_le",
     "url": "must be sqlite:///FILE or postgresql+psycopg://USER@HOST/NAME",
 }
 
