@@ -4,6 +4,7 @@ Only this folder asks the store and does sums; pages and files show what it answ
 weeks are cut in the site's time zone. An interval never listened to has no count: None, not 0.
 """
 
+from ginnel.reports.columns import BandedPassages, iter_columns
 from ginnel.reports.counts import CountRow, CoverageRow, counts, coverage, iter_counts
 from ginnel.reports.facts import SensorFacts, sensor_facts, site
 from ginnel.reports.intervals import Every, Period, cut, period, zone
@@ -11,6 +12,7 @@ from ginnel.reports.passages import PassageEntry, iter_entries, latest_passages
 from ginnel.reports.speeds import SpeedRow, iter_speeds, speed_histogram, speeds
 
 __all__ = [
+    "BandedPassages",
     "CountRow",
     "CoverageRow",
     "Every",
@@ -21,6 +23,7 @@ __all__ = [
     "counts",
     "coverage",
     "cut",
+    "iter_columns",
     "iter_counts",
     "iter_entries",
     "iter_speeds",

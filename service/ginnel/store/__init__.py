@@ -5,6 +5,7 @@ folder. It knows nothing of signals, files of samples or pages. Every write is o
 that a power cut leaves either the whole of a span or nothing of it.
 """
 
+from ginnel.store.columns import Coded, PassageColumns, iter_passage_columns
 from ginnel.store.engine import Store, open_store
 from ginnel.store.log import SpanChange, extend_span, put_sensor, put_site, record_span
 from ginnel.store.query import (
@@ -22,15 +23,18 @@ from ginnel.store.query import (
 from ginnel.store.schema import check, current, upgrade
 
 __all__ = [
+    "Coded",
     "LoggedPassage",
     "LoggedSpan",
     "PassageArrays",
+    "PassageColumns",
     "SpanChange",
     "Store",
     "check",
     "current",
     "extend_span",
     "extent_us",
+    "iter_passage_columns",
     "iter_passages",
     "latest_passages",
     "open_store",

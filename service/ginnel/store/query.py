@@ -110,7 +110,7 @@ def spans(
         query = query.where(SpanRow.started_us < end_us)
     with store.reading() as connection:
         if sensor is not None:
-            query = query.where(SpanRow.sensor_id == _known(connection, sensor)[0][0])
+            query = query.where(SpanRow.sensor_id == known_sensors(connection, sensor)[0][0])
         readings = _readings(connection)
         return [
             LoggedSpan(
@@ -134,7 +134,7 @@ def extent_us(store: Store, sensor: str | Collection[str] | None = None) -> tupl
     crossed = select(func.min(PassageRow.crossed_us), func.max(PassageRow.crossed_us) + 1)
     with store.reading() as connection:
         bounds: list[tuple[int, int]] = []
-        for sensor_id, _ in _known(connection, sensor):
+        for sensor_id, _ in known_sensors(connection, sensor):
             for query, row in ((heard, SpanRow), (crossed, PassageRow)):
                 first, last = connection.execute(query.where(row.sensor_id == sensor_id)).one()
                 if first is not None:
@@ -160,8 +160,8 @@ def iter_passages(
     with store.reading() as connection, ExitStack() as stack:
         readings = _readings(connection)
         streams = []
-        for sensor_id, name in _known(connection, sensor):
-            query = _passage_query(_PASSAGE_COLUMNS, sensor_id, start_us, end_us, with_uncounted)
+        for sensor_id, name in known_sensors(connection, sensor):
+            query = passage_query(_PASSAGE_COLUMNS, sensor_id, start_us, end_us, with_uncounted)
             rows = connection.execution_options(yield_per=_ROWS_AT_ONCE).execute(query)
             stack.callback(rows.close)
             streams.append(_logged(rows, name, readings))
@@ -175,8 +175,8 @@ def latest_passages(
     found: list[LoggedPassage] = []
     with store.reading() as connection:
         readings = _readings(connection)
-        for sensor_id, name in _known(connection, sensor):
-            query = _passage_query(_PASSAGE_COLUMNS, sensor_id, None, None, with_uncounted)
+        for sensor_id, name in known_sensors(connection, sensor):
+            query = passage_query(_PASSAGE_COLUMNS, sensor_id, None, None, with_uncounted)
             query = query.order_by(None).order_by(PassageRow.crossed_us.desc()).limit(n)
             found += _logged(connection.execute(query), name, readings)
     return sorted(found, key=lambda logged: -logged.passage.crossed_us)[:n]
@@ -190,8 +190,8 @@ def passage_arrays(
     About 20 bytes a passage: a busy year of one sensor is some tens of megabytes.
     """
     with store.reading() as connection:
-        ((sensor_id, _),) = _known(connection, sensor)
-        query = _passage_query(("crossed_us", "direction", "speed_umps"), sensor_id, start_us, end_us, False)
+        ((sensor_id, _),) = known_sensors(connection, sensor)
+        query = passage_query(("crossed_us", "direction", "speed_umps"), sensor_id, start_us, end_us, False)
         rows = connection.execution_options(yield_per=10 * _ROWS_AT_ONCE).execute(query)
         pieces = [
             np.array([(-1 if value is None else value) for row in part for value in row], np.int64).reshape(
@@ -208,10 +208,12 @@ def passage_arrays(
     )
 
 
-def _passage_query(
-    columns: Sequence[str], sensor_id: int, start_us: int | None, end_us: int | None, with_uncounted: bool
+def passage_query(
+    columns: Sequence[Any], sensor_id: int, start_us: int | None, end_us: int | None, with_uncounted: bool
 ) -> Select[Any]:
-    query = select(*(getattr(PassageRow, name) for name in columns)).where(PassageRow.sensor_id == sensor_id)
+    """Select columns of one sensor's passages, named or as expressions, in order of crossing."""
+    chosen = (getattr(PassageRow, one) if isinstance(one, str) else one for one in columns)
+    query = select(*chosen).where(PassageRow.sensor_id == sensor_id)
     if start_us is not None:
         query = query.where(PassageRow.crossed_us >= start_us)
     if end_us is not None:
@@ -229,7 +231,7 @@ def _logged(rows: Any, sensor: str, readings: dict[int, tuple[Mounting, str]]) -
         )
 
 
-def _known(connection: Connection, sensor: str | Collection[str] | None) -> list[tuple[int, str]]:
+def known_sensors(connection: Connection, sensor: str | Collection[str] | None) -> list[tuple[int, str]]:
     """Ids and names of all sensors, or of those named."""
     rows = connection.execute(select(SensorRow.id, SensorRow.name).order_by(SensorRow.name)).all()
     known = {row.name: row.id for row in rows}
