@@ -6,10 +6,12 @@
     +-- ConfigError          a setting is missing, unknown or out of range
     +-- CaptureError         samples cannot be had
     |   +-- CaptureFormatError   a file is not what it claims to be
+    |   +-- SourceLostError      a live source has gone, or sends nothing: try again
     |   +-- CaptureTimeError     nobody knows when it starts, or it overlaps another
     +-- ExportError          a file cannot be written
     +-- StoreError           the log cannot be read or written
         +-- StoreBusyError       locked or unreachable: try again
+        +-- SpanRefusedError     contradicts what is stored: trying again will not help
         +-- SchemaMismatchError  made by another version: `ginnel store upgrade`
 
 Each message is one line that says what, where and how to mend it.
@@ -36,6 +38,10 @@ class CaptureTimeError(CaptureError):
     """Nobody knows when a capture starts, or it overlaps another."""
 
 
+class SourceLostError(CaptureError):
+    """A live source has gone, or sends nothing; trying again may help."""
+
+
 class ExportError(GinnelError):
     """A file cannot be written."""
 
@@ -46,6 +52,10 @@ class StoreError(GinnelError):
 
 class StoreBusyError(StoreError):
     """The store is locked or unreachable; trying again may help."""
+
+
+class SpanRefusedError(StoreError):
+    """A span contradicts what is stored; trying again will not help."""
 
 
 class SchemaMismatchError(StoreError):

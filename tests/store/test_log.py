@@ -1,4 +1,4 @@
-"""What recording spans does: first the rules of `record_span` one by one, then live listening, then laws."""
+"""What recording spans does: first the rules of `record_span` one by one, then laws."""
 
 from __future__ import annotations
 
@@ -12,7 +12,6 @@ from ginnel.errors import StoreError
 from ginnel.store import (
     SpanChange,
     Store,
-    extend_span,
     iter_passages,
     open_store,
     put_sensor,
@@ -234,27 +233,6 @@ def test_measures_that_are_no_numbers_were_not_measured(store: Store) -> None:
     odd = passage(10, speed_se_mps=float("inf"), snr_db=float("nan"), speed_mps=1e9)
     record_span(store, NORTH, span(0, 60), [odd], "1")
     assert logged(store) == [replace(odd, speed_se_mps=None, snr_db=None, speed_mps=None)]
-
-
-def test_live_listening_extends_its_span(store: Store) -> None:
-    assert extend_span(store, NORTH, span(0, 10), [], "1") == SpanChange()
-    assert extend_span(store, NORTH, span(0, 20), [passage(10)], "1") == SpanChange(added=1)
-    both = extend_span(store, NORTH, span(0, 30), [passage(10), passage(25)], "1")
-    assert both == SpanChange(added=1, kept=1)
-    assert extend_span(store, NORTH, span(0, 20), [], "1") == SpanChange()  # late news: the end stays
-    assert stored_spans(store) == [(0, 30, "1")]
-    assert logged(store) == [passage(10), passage(25)]
-    # replay of the whole finds the same and changes nothing
-    assert record_span(store, NORTH, span(0, 30), [passage(10), passage(25)], "1").already_stored
-
-
-def test_live_listening_may_not_run_into_another_span(store: Store) -> None:
-    record_span(store, NORTH, span(20, 60), [], "1")
-    with pytest.raises(StoreError, match="overlaps a part"):
-        extend_span(store, NORTH, span(0, 21), [passage(10)], "1")
-    with pytest.raises(StoreError, match="overlaps a part"):
-        extend_span(store, NORTH, span(20, 61), [], "2")
-    assert logged(store) == []
 
 
 def test_site_and_sensors_are_known(store: Store) -> None:

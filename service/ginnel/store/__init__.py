@@ -7,7 +7,18 @@ that a power cut leaves either the whole of a span or nothing of it.
 
 from ginnel.store.columns import Coded, PassageColumns, iter_passage_columns
 from ginnel.store.engine import Store, open_store
-from ginnel.store.log import SpanChange, extend_span, put_sensor, put_site, record_span
+from ginnel.store.hourly import (
+    HourlyCounts,
+    HourlyListening,
+    HourlySpeeds,
+    are_whole_hours,
+    hourly_counts,
+    hourly_listening,
+    hourly_speeds,
+)
+from ginnel.store.hours import roll_up_hours
+from ginnel.store.live import extend_span, listened_until_us, redate_span
+from ginnel.store.log import SpanChange, put_sensor, put_site, record_span
 from ginnel.store.query import (
     LoggedPassage,
     LoggedSpan,
@@ -20,28 +31,41 @@ from ginnel.store.query import (
     site,
     spans,
 )
+from ginnel.store.rollup import Rollup, merge
 from ginnel.store.schema import check, current, upgrade
 
 __all__ = [
     "Coded",
+    "HourlyCounts",
+    "HourlyListening",
+    "HourlySpeeds",
     "LoggedPassage",
     "LoggedSpan",
     "PassageArrays",
     "PassageColumns",
+    "Rollup",
     "SpanChange",
     "Store",
+    "are_whole_hours",
     "check",
     "current",
     "extend_span",
     "extent_us",
+    "hourly_counts",
+    "hourly_listening",
+    "hourly_speeds",
     "iter_passage_columns",
     "iter_passages",
     "latest_passages",
+    "listened_until_us",
+    "merge",
     "open_store",
     "passage_arrays",
     "put_sensor",
     "put_site",
     "record_span",
+    "redate_span",
+    "roll_up_hours",
     "sensors",
     "site",
     "spans",

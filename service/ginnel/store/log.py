@@ -7,9 +7,8 @@ from dataclasses import dataclass, replace
 from typing import Any
 
 from sqlalchemy import Connection, Row, delete, insert, select, update
-from sqlalchemy.dialects import postgresql, sqlite
 
-from ginnel.errors import StoreError
+from ginnel.errors import SpanRefusedError
 from ginnel.store.codes import PassageCodes, encode
 from ginnel.store.engine import Store
 from ginnel.store.readings import mounting_row_id, reading_row_id, sensor_row_id
@@ -69,35 +68,35 @@ def record_span(
 
     Raises
     ------
-    StoreError
+    SpanRefusedError
         A partial overlap, or a passage that does not lie in the span. Nothing is changed.
     """
-    rows = _rows_of(sensor, span, passages)
+    rows = rows_of(sensor, span, passages)
     with store.writing() as connection:
         sensor_id = sensor_row_id(connection, sensor)
         reading_id = reading_row_id(connection, sensor_id, sensor, chain_version)
-        overlapping = _overlapping(connection, sensor_id, span)
-        for old in overlapping:
+        found = overlapping(connection, sensor_id, span)
+        for old in found:
             longer = old.started_us <= span.started_us and span.ended_us <= old.ended_us
             same = (old.started_us, old.ended_us) == (span.started_us, span.ended_us)
             if longer and not same and old.reading_id == reading_id:
-                return SpanChange(kept=len(_stored(connection, sensor_id, span)), already_stored=True)
+                return SpanChange(kept=len(stored_rows(connection, sensor_id, span)), already_stored=True)
             if not (span.started_us <= old.started_us and old.ended_us <= span.ended_us):
-                raise StoreError(_overlap_text(sensor, span, old))
+                raise SpanRefusedError(overlap_text(sensor, span, old))
 
-        stored = _stored(connection, sensor_id, span)
+        stored = stored_rows(connection, sensor_id, span)
         new = {(*row, reading_id) for row in rows}
         kept = len(stored & new)
         change = SpanChange(added=len(new) - kept, removed=len(stored) - kept, kept=kept)
-        if len(overlapping) == 1 and stored == new and _is_row_of(overlapping[0], span, reading_id):
+        if len(found) == 1 and stored == new and _is_row_of(found[0], span, reading_id):
             return replace(change, already_stored=True)
 
         # a span that covers others covers their time too; their crossings may lie just outside it
         crossings_us = [row[0] for row in stored | new if row[0] is not None]
         mark_stale(connection, sensor_id, span.started_us, span.ended_us, crossings_us)
-        if overlapping:
-            connection.execute(delete(SpanRow).where(SpanRow.id.in_([old.id for old in overlapping])))
-            connection.execute(delete(PassageRow).where(*_of_span(sensor_id, span)))
+        if found:
+            connection.execute(delete(SpanRow).where(SpanRow.id.in_([old.id for old in found])))
+            connection.execute(delete(PassageRow).where(*of_span(sensor_id, span)))
         connection.execute(
             insert(SpanRow).values(
                 sensor_id=sensor_id,
@@ -110,72 +109,27 @@ def record_span(
         )
         if rows:
             # A crossing just outside its span may, hardly ever, hit the microsecond of a neighbour's.
-            for crossed_us in _taken_crossings(connection, sensor_id, rows):
-                raise StoreError(
+            for crossed_us in taken_crossings(connection, sensor_id, rows):
+                raise SpanRefusedError(
                     f"{sensor.name} has a passage crossing at {utc_text(crossed_us)} in a neighbouring span: "
                     "replay the captures of both together"
                 )
-            connection.execute(insert(PassageRow), _values(sensor_id, reading_id, rows))
+            connection.execute(insert(PassageRow), values(sensor_id, reading_id, rows))
         return change
 
 
-def extend_span(
-    store: Store, sensor: Sensor, span: Span, passages: Iterable[Passage], chain_version: str
-) -> SpanChange:
-    """Store how far live listening got, and the passages found since, in one transaction.
-
-    The span is known by its start; its end only ever moves forward. Passages that are stored already
-    stay as they are, so that a batch may safely be handed in twice.
-
-    Raises
-    ------
-    StoreError
-        The span runs into another, or was begun under another reading. Nothing is changed.
-    """
-    rows = _rows_of(sensor, span, passages)
-    with store.writing() as connection:
-        sensor_id = sensor_row_id(connection, sensor)
-        reading_id = reading_row_id(connection, sensor_id, sensor, chain_version)
-        known = None
-        for old in _overlapping(connection, sensor_id, span):
-            if old.started_us != span.started_us or old.reading_id != reading_id:
-                raise StoreError(_overlap_text(sensor, span, old))
-            known = old
-        if known is None:
-            connection.execute(
-                insert(SpanRow).values(
-                    sensor_id=sensor_id,
-                    reading_id=reading_id,
-                    started_us=span.started_us,
-                    ended_us=span.ended_us,
-                    sample_rate_hz=span.sample_rate_hz,
-                    clock_trusted=span.clock_trusted,
-                )
-            )
-        elif known.ended_us < span.ended_us:
-            connection.execute(update(SpanRow).where(SpanRow.id == known.id).values(ended_us=span.ended_us))
-        grown_from_us = span.started_us if known is None else min(known.ended_us, span.ended_us)
-        mark_stale(connection, sensor_id, grown_from_us, span.ended_us, [row.crossed_us for row in rows])
-        if not rows:
-            return SpanChange()
-        added = len(rows) - len(_taken_crossings(connection, sensor_id, rows))
-        dialect = sqlite if store.dialect == "sqlite" else postgresql
-        connection.execute(
-            dialect.insert(PassageRow).on_conflict_do_nothing(), _values(sensor_id, reading_id, rows)
-        )
-        return SpanChange(added=added, kept=len(rows) - added)
-
-
-def _rows_of(sensor: Sensor, span: Span, passages: Iterable[Passage]) -> list[PassageCodes]:
+def rows_of(sensor: Sensor, span: Span, passages: Iterable[Passage]) -> list[PassageCodes]:
     """Rows in order of crossing, each crossing its own; refuses what does not lie in the span."""
     if span.ended_us < span.started_us:
-        raise StoreError(f"a span of {sensor.name} ends before it starts, at {utc_text(span.started_us)}")
+        raise SpanRefusedError(
+            f"a span of {sensor.name} ends before it starts, at {utc_text(span.started_us)}"
+        )
     rows: list[PassageCodes] = []
     for row in sorted((encode(passage) for passage in passages), key=_order):
         outside_us = max(span.started_us - row.started_us, row.ended_us - span.ended_us, 0)
         astray_us = max(row.started_us - row.crossed_us, row.crossed_us - row.ended_us, 0)
         if outside_us > ROUNDING_US or astray_us > CROSSING_MARGIN_US or row.ended_us < row.started_us:
-            raise StoreError(
+            raise SpanRefusedError(
                 f"the passage of {sensor.name} crossing at {utc_text(row.crossed_us)} does not lie in "
                 f"the span from {utc_text(span.started_us)} to {utc_text(span.ended_us)}"
             )
@@ -192,11 +146,12 @@ def _order(row: PassageCodes) -> tuple[int, ...]:
     return tuple(-1 if value is None else value for value in row)
 
 
-def _values(sensor_id: int, reading_id: int, rows: Sequence[PassageCodes]) -> list[dict[str, Any]]:
+def values(sensor_id: int, reading_id: int, rows: Sequence[PassageCodes]) -> list[dict[str, Any]]:
+    """Rows as the passage table takes them."""
     return [{"sensor_id": sensor_id, "reading_id": reading_id, **row._asdict()} for row in rows]
 
 
-def _overlapping(connection: Connection, sensor_id: int, span: Span) -> Sequence[Row[Any]]:
+def overlapping(connection: Connection, sensor_id: int, span: Span) -> Sequence[Row[Any]]:
     """Find stored spans that share time, or their start, with a span."""
     return connection.execute(
         select(*SpanRow.__table__.columns)
@@ -209,7 +164,7 @@ def _overlapping(connection: Connection, sensor_id: int, span: Span) -> Sequence
     ).all()
 
 
-def _of_span(sensor_id: int, span: Span) -> tuple[Any, ...]:
+def of_span(sensor_id: int, span: Span) -> tuple[Any, ...]:
     """Conditions for the passages of a span; the bounds of the crossing let the key find them."""
     return (
         PassageRow.sensor_id == sensor_id,
@@ -220,10 +175,10 @@ def _of_span(sensor_id: int, span: Span) -> tuple[Any, ...]:
     )
 
 
-def _stored(connection: Connection, sensor_id: int, span: Span) -> set[tuple[int | None, ...]]:
+def stored_rows(connection: Connection, sensor_id: int, span: Span) -> set[tuple[int | None, ...]]:
     """Rows of a span as they are stored, each with its reading."""
     columns = [getattr(PassageRow, name) for name in (*PassageCodes._fields, "reading_id")]
-    return {tuple(row) for row in connection.execute(select(*columns).where(*_of_span(sensor_id, span)))}
+    return {tuple(row) for row in connection.execute(select(*columns).where(*of_span(sensor_id, span)))}
 
 
 def _is_row_of(row: Row[Any], span: Span, reading_id: int) -> bool:
@@ -236,7 +191,7 @@ def _is_row_of(row: Row[Any], span: Span, reading_id: int) -> bool:
     )
 
 
-def _taken_crossings(connection: Connection, sensor_id: int, rows: Sequence[PassageCodes]) -> list[int]:
+def taken_crossings(connection: Connection, sensor_id: int, rows: Sequence[PassageCodes]) -> list[int]:
     """Find crossings of these rows that the log holds already."""
     crossings = {row.crossed_us for row in rows}
     near = connection.execute(
@@ -248,7 +203,8 @@ def _taken_crossings(connection: Connection, sensor_id: int, rows: Sequence[Pass
     return sorted(crossings.intersection(near))
 
 
-def _overlap_text(sensor: Sensor, span: Span, old: Row[Any]) -> str:
+def overlap_text(sensor: Sensor, span: Span, old: Row[Any]) -> str:
+    """Say that a span overlaps a stored one."""
     return (
         f"{sensor.name}: {utc_text(span.started_us)} to {utc_text(span.ended_us)} overlaps a part of what "
         f"is stored, {utc_text(old.started_us)} to {utc_text(old.ended_us)}: "
