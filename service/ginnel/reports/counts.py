@@ -4,15 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
-from ginnel import store as log
-from ginnel.reports.intervals import Every, Period, period
-from ginnel.stats import counts_in, listened_us_in, poisson_limits
-from ginnel.stats.counts import IntArray
-from ginnel.store import PassageArrays, Store
+from ginnel.reports.intervals import Every, period
+from ginnel.reports.parts import chosen_sensors, iter_cells, listened
+from ginnel.stats import poisson_limits
+from ginnel.store import Store
 from ginnel.words import US_PER_S, Direction
+
+#: An interval that was listened to for at least this share of it is as good as whole.
+WHOLE = 0.999
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,6 +32,29 @@ class CountRow:
     corrected: float | None  # by tallies; None as long as there are none
     coverage: float  # 0 to 1
     listened_s: float
+
+    @property
+    def is_partial(self) -> bool:
+        """Whether only a part of the interval was listened to."""
+        return 0 < self.coverage < WHOLE
+
+    @property
+    def expanded(self) -> float | None:
+        """What the whole interval would have had, were the part not heard like the part heard."""
+        return self._expanded(self.count)
+
+    @property
+    def expanded_low(self) -> float | None:
+        """Lower 95 % limit of ``expanded``."""
+        return self._expanded(self.count_low)
+
+    @property
+    def expanded_high(self) -> float | None:
+        """Upper 95 % limit of ``expanded``."""
+        return self._expanded(self.count_high)
+
+    def _expanded(self, value: float | None) -> float | None:
+        return None if value is None or self.coverage <= 0 else value / self.coverage
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -71,12 +97,24 @@ def iter_counts(
     Every interval has a row for approaching and one for receding, and one for unknown if the sensor
     has any passage of unknown direction in the period; with ``together`` it has one row in all. The
     counts of an interval that was listened to in part are what was counted: coverage says how much
-    of it that was. A crossing may lie just outside the time listened; it is counted all the same.
+    of it that was, ``expanded`` what the whole may have had. A crossing may lie just outside the time
+    listened; it is counted all the same.
     """
-    names = chosen_sensors(store, sensors)
-    cut_up = period(store, every, start_us, end_us, tz, names)
-    for sensor in names:
-        yield from _sensor_counts(store, sensor, cut_up, together=together)
+    for cell in iter_cells(store, sensors, start_us, end_us, every, tz, together=together):
+        count = int(cell.part.count[cell.i]) if cell.known else None
+        low, high = (None, None) if count is None else _limits(count)
+        yield CountRow(
+            sensor=cell.sensor,
+            interval_start_us=cell.start_us,
+            interval_end_us=cell.end_us,
+            direction=cell.part.direction,
+            count=count,
+            count_low=low,
+            count_high=high,
+            corrected=None,
+            coverage=cell.coverage,
+            listened_s=cell.listened_us / US_PER_S,
+        )
 
 
 def coverage(
@@ -103,57 +141,8 @@ def coverage(
     )
 
 
-def chosen_sensors(store: Store, sensors: Sequence[str] | None) -> list[str]:
-    """Names of the sensors asked for, or of all, in order of name."""
-    return [sensor.name for sensor in log.sensors(store)] if sensors is None else sorted(set(sensors))
-
-
-def listened(store: Store, sensor: str, cut_up: Period) -> IntArray:
-    """Microseconds listened in each interval."""
-    if not len(cut_up):
-        return np.empty(0, np.int64)
-    heard = log.spans(store, sensor, int(cut_up.edges_us[0]), int(cut_up.edges_us[-1]))
-    return listened_us_in(
-        cut_up.edges_us,
-        np.array([one.span.started_us for one in heard], np.int64),
-        np.array([one.span.ended_us for one in heard], np.int64),
-    )
-
-
-def shown_directions(passages: PassageArrays, *, together: bool) -> list[Direction | None]:
-    """Directions that get a row: approaching and receding always, unknown where there are any."""
-    if together:
-        return [None]
-    shown: list[Direction | None] = [Direction.APPROACHING, Direction.RECEDING]
-    if len(passages.of(Direction.UNKNOWN).crossed_us):
-        shown.append(Direction.UNKNOWN)
-    return shown
-
-
-def _sensor_counts(store: Store, sensor: str, cut_up: Period, *, together: bool) -> Iterator[CountRow]:
-    if not len(cut_up):
-        return
-    edges_us = cut_up.edges_us
-    passages = log.passage_arrays(store, sensor, int(edges_us[0]), int(edges_us[-1]))
-    listened_us = listened(store, sensor, cut_up)
-    known = (listened_us > 0) | (counts_in(passages.crossed_us, edges_us) > 0)
-    directions = shown_directions(passages, together=together)
-    columns = []
-    for direction in directions:
-        count = counts_in(passages.of(direction).crossed_us, edges_us)
-        columns.append((direction, count, *poisson_limits(count)))
-    for i in range(len(cut_up)):
-        length_us = int(edges_us[i + 1] - edges_us[i])
-        for direction, count, low, high in columns:
-            yield CountRow(
-                sensor=sensor,
-                interval_start_us=int(edges_us[i]),
-                interval_end_us=int(edges_us[i + 1]),
-                direction=direction,
-                count=int(count[i]) if known[i] else None,
-                count_low=float(low[i]) if known[i] else None,
-                count_high=float(high[i]) if known[i] else None,
-                corrected=None,
-                coverage=int(listened_us[i]) / length_us,
-                listened_s=int(listened_us[i]) / US_PER_S,
-            )
+@lru_cache(maxsize=10_000)
+def _limits(count: int) -> tuple[float, float]:
+    """Poisson limits, looked up: counts of intervals are few numbers that come again and again."""
+    low, high = poisson_limits(np.array([count]))
+    return float(low[0]), float(high[0])

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ginnel import store as log
-from ginnel.reports.counts import chosen_sensors, listened, shown_directions
-from ginnel.reports.intervals import Every, Period, period
+from ginnel.reports.intervals import Every
+from ginnel.reports.parts import iter_cells
 from ginnel.stats import SpeedSummary, band_counts, summarise_speeds
 from ginnel.store import Store
 from ginnel.words import Direction, FloatArray
@@ -55,12 +55,17 @@ def iter_speeds(
 
     ``n`` is the number of passages with a measured speed, which may be fewer than passed.
     """
-    names = chosen_sensors(store, sensors)
-    cut_up = period(store, every, start_us, end_us, tz, names)
     bands = {sensor.name: sensor.speed_bands_mps for sensor in log.sensors(store)}
-    for sensor in names:
-        if len(cut_up):
-            yield from _sensor_speeds(store, sensor, bands.get(sensor, ()), cut_up, together=together)
+    for cell in iter_cells(store, sensors, start_us, end_us, every, tz, together=together):
+        speed_mps = cell.part.speed_mps(cell.i)
+        yield SpeedRow(
+            sensor=cell.sensor,
+            interval_start_us=cell.start_us,
+            interval_end_us=cell.end_us,
+            direction=cell.part.direction,
+            summary=summarise_speeds(speed_mps) if cell.known else None,
+            bands=tuple(band_counts(speed_mps, bands[cell.sensor]).tolist()) if cell.known else None,
+        )
 
 
 def speed_histogram(
@@ -89,27 +94,3 @@ def speed_histogram(
     first, last = np.floor(measured.min() / bin_mps), np.floor(measured.max() / bin_mps) + 1
     edges_mps = np.arange(first, last + 1) * bin_mps
     return edges_mps, band_counts(measured, edges_mps[1:-1].tolist()).astype(float), summary
-
-
-def _sensor_speeds(
-    store: Store, sensor: str, bands_mps: Sequence[float], cut_up: Period, *, together: bool
-) -> Iterator[SpeedRow]:
-    edges_us = cut_up.edges_us
-    passages = log.passage_arrays(store, sensor, int(edges_us[0]), int(edges_us[-1]))
-    known = listened(store, sensor, cut_up) > 0
-    known |= np.diff(np.searchsorted(passages.crossed_us, edges_us)) > 0
-    columns = []
-    for direction in shown_directions(passages, together=together):
-        chosen = passages.of(direction)
-        columns.append((direction, chosen.speed_mps, np.searchsorted(chosen.crossed_us, edges_us)))
-    for i in range(len(cut_up)):
-        for direction, speed_mps, at in columns:
-            here = speed_mps[at[i] : at[i + 1]]
-            yield SpeedRow(
-                sensor=sensor,
-                interval_start_us=int(edges_us[i]),
-                interval_end_us=int(edges_us[i + 1]),
-                direction=direction,
-                summary=summarise_speeds(here) if known[i] else None,
-                bands=tuple(band_counts(here, bands_mps).tolist()) if known[i] else None,
-            )

@@ -1,4 +1,4 @@
-"""Events and listening time in intervals."""
+"""Events, and time covered by stretches, in intervals."""
 
 from __future__ import annotations
 
@@ -31,17 +31,17 @@ def counts_in(times_us: IntArray, edges_us: IntArray) -> IntArray:
     return np.bincount(interval_idx[inside], minlength=n_intervals).astype(np.int64)
 
 
-def listened_us_in(edges_us: IntArray, started_us: IntArray, ended_us: IntArray) -> IntArray:
-    """Microseconds of each interval that lie in at least one span.
+def union_us_in(edges_us: IntArray, started_us: IntArray, ended_us: IntArray) -> IntArray:
+    """Microseconds of each interval that lie in at least one of some stretches.
 
     Parameters
     ----------
     edges_us : array, shape (m + 1,), ascending; interval i is [edges_us[i], edges_us[i + 1])
-    started_us, ended_us : arrays, shape (n,); spans [started, ended), any order, may overlap
+    started_us, ended_us : arrays, shape (n,); stretches [started, ended), any order, may overlap
 
     Returns
     -------
-    array, shape (m,); coverage is this over ``diff(edges_us)``
+    array, shape (m,); of spans this is the time listened, of presences the time occupied
     """
     _check_ascending(edges_us)
     if len(started_us) == 0 or len(edges_us) == 0:
@@ -49,13 +49,13 @@ def listened_us_in(edges_us: IntArray, started_us: IntArray, ended_us: IntArray)
     order = np.argsort(started_us, kind="stable")
     starts = np.asarray(started_us, np.int64)[order]
     ends = np.maximum.accumulate(np.asarray(ended_us, np.int64)[order])
-    # A span that begins inside an earlier one only counts from where that one ends.
+    # A stretch that begins inside an earlier one only counts from where that one ends.
     starts = np.maximum(starts, np.concatenate([starts[:1], ends[:-1]]))
     before = np.concatenate([[0], np.cumsum(np.maximum(ends - starts, 0))])
-    span_idx = np.searchsorted(starts, edges_us, side="right")
-    last_end = np.concatenate([[np.iinfo(np.int64).min], ends])[span_idx]
-    listened = before[span_idx] - np.maximum(last_end, edges_us) + edges_us
-    return np.diff(np.where(span_idx == 0, 0, listened)).astype(np.int64)
+    stretch_idx = np.searchsorted(starts, edges_us, side="right")
+    last_end = np.concatenate([[np.iinfo(np.int64).min], ends])[stretch_idx]
+    covered = before[stretch_idx] - np.maximum(last_end, edges_us) + edges_us
+    return np.diff(np.where(stretch_idx == 0, 0, covered)).astype(np.int64)
 
 
 def _check_ascending(edges_us: IntArray) -> None:

@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from ginnel.stats import counts_in, listened_us_in
+from ginnel.stats import counts_in, union_us_in
 
 times = st.lists(st.integers(-5, 40), max_size=30)
 edges = st.lists(st.integers(0, 30), max_size=8, unique=True).map(sorted)
@@ -54,11 +54,11 @@ def test_listening_agrees_with_second_by_second(spans: list[tuple[int, int]], cu
     heard = {moment for start, length in spans for moment in range(start, start + length)}
     by_hand = [sum(low <= moment < high for moment in heard) for low, high in pairwise(cuts)]
     starts, ends = [start for start, _ in spans], [start + length for start, length in spans]
-    assert listened_us_in(ints(cuts), ints(starts), ints(ends)).tolist() == by_hand
+    assert union_us_in(ints(cuts), ints(starts), ints(ends)).tolist() == by_hand
 
 
 def test_descending_edges_are_refused() -> None:
     with pytest.raises(ValueError, match="must not descend"):
         counts_in(ints([]), ints([2, 1]))
     with pytest.raises(ValueError, match="must not descend"):
-        listened_us_in(ints([2, 1]), ints([0]), ints([1]))
+        union_us_in(ints([2, 1]), ints([0]), ints([1]))
