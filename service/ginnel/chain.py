@@ -11,12 +11,13 @@ from ginnel.passages.activity import ActivityStage, Stretch
 from ginnel.passages.cluster import Cluster
 from ginnel.passages.explain import explain
 from ginnel.passages.measure import measure
+from ginnel.passages.pace import pace_of
 from ginnel.passages.site import Site
 from ginnel.passages.stories import Told, tell
 from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor
 
 #: Named by every passage; changes whenever the same samples could give other passages.
-CHAIN_VERSION = "1"
+CHAIN_VERSION = "2"
 
 #: Heard this near to the span's end or beginning: the span cut it.
 _CUT_S = 0.5
@@ -84,7 +85,7 @@ class Chain:
         for one in told:
             crossed_frame = one.one.mover.crossed_s * self._site.frame_rate_hz
             if self._belongs(stretch, one, crossed_frame):
-                passages.append(self._passage(stretch, one, crossed_frame))
+                passages.append(self._passage(stretch, cluster, one, crossed_frame))
                 self._given.append((crossed_frame, one.one.mover.sign))
         return passages
 
@@ -101,9 +102,9 @@ class Chain:
             sign == told.one.mover.sign and abs(crossed_frame - given) < seam for given, sign in self._given
         )
 
-    def _passage(self, stretch: Stretch, told: Told, crossed_frame: float) -> Passage:
+    def _passage(self, stretch: Stretch, cluster: Cluster, told: Told, crossed_frame: float) -> Passage:
         one = told.one
-        measured = measure(one)
+        measured = measure(one, pace_of(cluster, one))
         started_us = self._time_us(stretch.first_frame_idx + one.first_frame)
         ended_us = self._time_us(stretch.first_frame_idx + one.last_frame)
         crossed_us = self._time_us(crossed_frame)

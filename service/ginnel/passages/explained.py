@@ -8,13 +8,12 @@ import numpy as np
 
 from ginnel.passages.cluster import Cluster
 from ginnel.passages.fit import Evidence, Fit, gather, weigh
-from ginnel.passages.mover import Mover
+from ginnel.passages.mover import SQRT_TAU, Mover
 from ginnel.passages.site import NEPERS_PER_DB, ZONE_COSINE2
 from ginnel.words import FloatArray
 
 #: A mover claims cells within this many line widths, or this share of its frequency ...
 _OWN_WIDTHS, _OWN_SHARE = 2.5, 0.12
-_SQRT_TAU = float(np.sqrt(2 * np.pi))
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +61,7 @@ def claim_of(cluster: Cluster, mover: Mover, margin_db: float | None = None) -> 
     reach = np.maximum(_OWN_WIDTHS * line.width, _OWN_SHARE * np.abs(line.centre)) + 1.0
     margin_db = cluster.site.body.claim_db if margin_db is None else margin_db
     level_db = margin_db + np.clip(evidence.stronger_db, 0.0, margin_db)
-    density = np.exp(line.log_power + level_db * NEPERS_PER_DB) / (line.width * _SQRT_TAU)
+    density = np.exp(line.log_power + level_db * NEPERS_PER_DB) / (line.width * SQRT_TAU)
     bins = np.arange(cluster.n_bins) + cluster.site.plan.first_bin_idx
     near = np.abs(bins - line.centre[mine, None]) <= reach[mine, None]
     claim[frames] = near * density[mine, None] * cluster.noise_before(frames)

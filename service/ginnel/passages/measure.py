@@ -6,6 +6,7 @@ import math
 from dataclasses import dataclass
 
 from ginnel.passages.explained import Explained
+from ginnel.passages.pace import Pace
 from ginnel.words import Direction
 
 #: Difference of scores, nats, that makes the odds for a direction e to 1.
@@ -15,7 +16,6 @@ _DIRECTION_NATS = 25.0
 _LEAST_CONFIDENCE = 0.6
 #: Speed error that the model itself makes, relative: steps, drift and where the torso is.
 _MODEL_SPEED_ERROR = 0.02
-_SPEED_IDX = 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,18 +28,16 @@ class Measured:
     speed_se_mps: float
 
 
-def measure(one: Explained) -> Measured:
-    """Read direction and speed off a fitted mover and its rival."""
+def measure(one: Explained, pace: Pace) -> Measured:
+    """Tell direction, by a fitted mover and its rival, and speed."""
     margin = (one.fit.score - one.rival_score) / _DIRECTION_NATS
     confidence = 1.0 / (1.0 + math.exp(-min(max(margin, -30.0), 30.0)))
     direction = Direction.APPROACHING if one.mover.sign > 0 else Direction.RECEDING
     if confidence < _LEAST_CONFIDENCE:
         direction = Direction.UNKNOWN
-    speed_mps = one.mean_speed_mps
-    variance = float(max(one.fit.covariance[_SPEED_IDX, _SPEED_IDX], 0.0))
     return Measured(
         direction=direction,
         confidence=None if direction is Direction.UNKNOWN else min(confidence, 0.9999),
-        speed_mps=speed_mps,
-        speed_se_mps=math.sqrt(variance + (_MODEL_SPEED_ERROR * speed_mps) ** 2),
+        speed_mps=pace.speed_mps,
+        speed_se_mps=math.hypot(pace.se_mps, _MODEL_SPEED_ERROR * pace.speed_mps),
     )

@@ -11,12 +11,12 @@ from ginnel.passages.site import N_ZONES, Site
 from ginnel.words import FloatArray
 
 #: A Hann frame's main lobe as a Gaussian: its half-power width is 1.44 bins (Harris 1978, Table 1).
-_LOBE_BINS = 1.44 / 2.355
+LOBE_BINS = 1.44 / 2.355
 #: A uniform spread over one unit has this standard deviation.
 _UNIFORM = 1 / np.sqrt(12.0)
 #: A Hann window weighs a frame's middle: chirps smear as if it were this much shorter.
 _WINDOW_SHARE = 0.67
-_SQRT_TAU = float(np.sqrt(2 * np.pi))
+SQRT_TAU = float(np.sqrt(2 * np.pi))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -77,7 +77,7 @@ def line_of(site: Site, mover: Mover, t_s: FloatArray, point: FloatArray | None 
     chirp = speed_mps**2 * bend * bins_per_mps * site.frame_s * _WINDOW_SHARE * _UNIFORM
     spread = site.body.length_m * speed_mps * bend * bins_per_mps * _UNIFORM
     wobble = site.body.gait_ratio * centre
-    width = np.sqrt(_LOBE_BINS**2 + chirp * chirp + spread * spread + wobble * wobble)
+    width = np.sqrt(LOBE_BINS**2 + chirp * chirp + spread * spread + wobble * wobble)
     log_power = site.nominal_level(x) + np.tensordot(mover.level, zones, axes=1)
     centre = centre * mover.sign if site.is_iq else np.abs(centre)
     return Line(x, log_range, centre, width, np.minimum(log_power, 40.0), zones)
@@ -92,7 +92,7 @@ def line_shape(site: Site, line: Line, bins: NDArray[np.intp]) -> FloatArray:
         z = (bins + line.centre[..., None]) / width
         shape += np.exp(-0.5 * z * z)
     limbs = site.body.limb_share
-    shape *= ((1.0 - limbs) / (line.width * _SQRT_TAU))[..., None]
+    shape *= ((1.0 - limbs) / (line.width * SQRT_TAU))[..., None]
     shape += limbs / bins.shape[-1]
     shape *= np.exp(line.log_power)[..., None]
     return shape
