@@ -177,6 +177,50 @@ class Passage:
     flags: frozenset[Flag] = frozenset()
 
 
+class Severity(StrEnum):
+    """How bad it is: counts are worse than they could be, or they are not being made."""
+
+    WARNING = "warning"
+    FAILURE = "failure"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class HealthSample:
+    """How well a sensor heard in the minute before a moment, and how its computer did; None: not known.
+
+    Levels are decibels against full scale (0 dBFS is a sine that just fits); lines stand so far above
+    the noise beside them.
+    """
+
+    at_us: int
+    listened_s: float = 0.0
+    level_dbfs: float | None = None
+    noise_dbfs_hz: float | None = None  # density of the noise between the lines
+    hum_db: float | None = None  # strongest line at an odd multiple of the mains frequency
+    lamp_db: float | None = None  # strongest line at an even one, which is how lamps flicker
+    lamp_mps: float | None = None  # the speed that it looks like
+    clipped_share: float | None = None  # of samples
+    dropped_samples: int = 0
+    lag_s: float | None = None  # the newest sample is so old
+    disk_free_bytes: int | None = None
+    disk_size_bytes: int | None = None
+    resident_bytes: int | None = None
+    temperature_c: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Condition:
+    """Something that is wrong, or was, and what to do about it."""
+
+    kind: str
+    sensor: str | None  # None: it concerns all
+    severity: Severity
+    raised_us: int
+    cleared_us: int | None = None  # None: it still is
+    sentence: str
+    advice: str
+
+
 def speed_band_label(speed_mps: float | None, edges_mps: Sequence[float]) -> str:
     """Name of the speed band that holds a speed: ``<0.5``, ``0.5-1``, ``>=3``.
 

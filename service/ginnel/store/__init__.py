@@ -7,6 +7,15 @@ that a power cut leaves either the whole of a span or nothing of it.
 
 from ginnel.store.columns import Coded, PassageColumns, iter_passage_columns
 from ginnel.store.engine import Store, open_store
+from ginnel.store.health import (
+    LoggedHealth,
+    conditions,
+    iter_health,
+    latest_health,
+    open_conditions,
+    put_conditions,
+    put_health,
+)
 from ginnel.store.hourly import (
     HourlyCounts,
     HourlyListening,
@@ -17,6 +26,7 @@ from ginnel.store.hourly import (
     hourly_speeds,
 )
 from ginnel.store.hours import roll_up_hours
+from ginnel.store.jobs import JobRecord, job_records, put_job
 from ginnel.store.live import extend_span, listened_until_us, redate_span
 from ginnel.store.log import SpanChange, put_sensor, put_site, record_span
 from ginnel.store.query import (
@@ -39,6 +49,8 @@ __all__ = [
     "HourlyCounts",
     "HourlyListening",
     "HourlySpeeds",
+    "JobRecord",
+    "LoggedHealth",
     "LoggedPassage",
     "LoggedSpan",
     "PassageArrays",
@@ -48,19 +60,27 @@ __all__ = [
     "Store",
     "are_whole_hours",
     "check",
+    "conditions",
     "current",
     "extend_span",
     "extent_us",
     "hourly_counts",
     "hourly_listening",
     "hourly_speeds",
+    "iter_health",
     "iter_passage_columns",
     "iter_passages",
+    "job_records",
+    "latest_health",
     "latest_passages",
     "listened_until_us",
     "merge",
+    "open_conditions",
     "open_store",
     "passage_arrays",
+    "put_conditions",
+    "put_health",
+    "put_job",
     "put_sensor",
     "put_site",
     "record_span",

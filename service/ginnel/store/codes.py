@@ -59,10 +59,10 @@ def encode(passage: Passage) -> PassageCodes:
         direction=DIRECTION_CODES[passage.direction],
         mover=None if passage.mover is None else MOVER_CODES[passage.mover],
         flags=sum(FLAG_BITS[flag] for flag in passage.flags),
-        direction_confidence_ppm=_scaled(passage.direction_confidence, MILLIONTHS),
-        speed_umps=_scaled(passage.speed_mps, MILLIONTHS),
-        speed_se_umps=_scaled(passage.speed_se_mps, MILLIONTHS),
-        snr_mdb=_scaled(passage.snr_db, THOUSANDTHS),
+        direction_confidence_ppm=scaled(passage.direction_confidence, MILLIONTHS),
+        speed_umps=scaled(passage.speed_mps, MILLIONTHS),
+        speed_se_umps=scaled(passage.speed_se_mps, MILLIONTHS),
+        snr_mdb=scaled(passage.snr_db, THOUSANDTHS),
     )
 
 
@@ -76,21 +76,22 @@ def decode(row: Any) -> Passage:
         direction=_DIRECTIONS[row.direction],
         mover=None if row.mover is None else _MOVERS[row.mover],
         flags=_flag_set(row.flags),
-        direction_confidence=_unscaled(row.direction_confidence_ppm, MILLIONTHS),
-        speed_mps=_unscaled(row.speed_umps, MILLIONTHS),
-        speed_se_mps=_unscaled(row.speed_se_umps, MILLIONTHS),
-        snr_db=_unscaled(row.snr_mdb, THOUSANDTHS),
+        direction_confidence=unscaled(row.direction_confidence_ppm, MILLIONTHS),
+        speed_mps=unscaled(row.speed_umps, MILLIONTHS),
+        speed_se_mps=unscaled(row.speed_se_umps, MILLIONTHS),
+        snr_db=unscaled(row.snr_mdb, THOUSANDTHS),
     )
 
 
-def _scaled(value: float | None, per_unit: int) -> int | None:
+def scaled(value: float | None, per_unit: float) -> int | None:
     """Whole number of small units; what is not finite or absurdly large was not measured."""
     if value is None or not math.isfinite(value) or abs(value) * per_unit > _INT32_MAX:
         return None
     return round(value * per_unit)
 
 
-def _unscaled(value: int | None, per_unit: int) -> float | None:
+def unscaled(value: int | None, per_unit: float) -> float | None:
+    """Number in plain units again."""
     return None if value is None else value / per_unit
 
 
