@@ -5,16 +5,23 @@ from __future__ import annotations
 import sys
 from datetime import datetime
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
 from ginnel.cli.options import Moment, config_option, moment_us
 
+if TYPE_CHECKING:
+    from ginnel.export import Question
+    from ginnel.store import Store
+
+_TABLES = ["passages", "counts", "speeds"]
+_FORMATS = ["csv", "jsonl", "parquet", "xlsx"]
 _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
 
 
 @click.command()
-@click.argument("table", type=click.Choice(["passages", "counts", "speeds"]))
+@click.argument("tables", metavar="TABLE...", type=click.Choice(_TABLES), nargs=-1, required=True)
 @config_option
 @click.option("--sensor", "sensors", metavar="NAME", multiple=True, help="Only this sensor; may be repeated.")
 @click.option("--from", "start", type=Moment(), help="First moment; site time unless it has an offset.")
@@ -25,14 +32,17 @@ _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
     "--every", type=click.Choice(_INTERVALS), default="hour", show_default=True, help="Length of an interval."
 )
 @click.option(
-    "--format", "kind", type=click.Choice(["csv"]), default="csv", show_default=True, help="Kind of file."
+    "--format", "kind", type=click.Choice(_FORMATS), default="csv", show_default=True, help="Kind of file."
 )
 @click.option("--uncounted", is_flag=True, help="Passages: turn-backs and fidgeting too, which do not count.")
 @click.option(
-    "--output", type=click.Path(path_type=Path, dir_okay=False), help="The file; without it, standard output."
+    "--partitioned",
+    is_flag=True,
+    help="Passages as Parquet: a folder, with a part for each sensor and month.",
 )
+@click.option("--output", type=click.Path(path_type=Path), help="The file; without it, standard output.")
 def export(
-    table: str,
+    tables: tuple[str, ...],
     config_file: Path | None,
     sensors: tuple[str, ...],
     start: datetime | None,
@@ -40,33 +50,67 @@ def export(
     every: str,
     kind: str,
     uncounted: bool,
+    partitioned: bool,
     output: Path | None,
 ) -> None:
-    """Write TABLE, one of passages, counts and speeds, as CSV.
+    """Write TABLE, one of passages, counts and speeds, as a file.
 
     Beside a file NAME.csv comes NAME.datapackage.json, which says what the columns are. An interval that
-    nobody listened to has a blank count, not zero.
-    """
+    nobody listened to has a blank count, not zero. A workbook (xlsx) may hold several tables.
+
+    \b
+    For example, the counts of March, day by day:
+      ginnel export counts --every day --from 2026-03-01 --to 2026-04-01 --output march.csv
+    """  # noqa: D301 (the backspace is click's mark for lines that stay as they are)
+    _check_usage(tables, kind, uncounted=uncounted, partitioned=partitioned, output=output)
     from ginnel import export as files
     from ginnel.config import load_settings
     from ginnel.reports import Every, site
     from ginnel.store import open_store
 
-    if uncounted and table != "passages":
-        raise click.UsageError("--uncounted goes with passages only")
     with open_store(load_settings(config_file).store.url, read_only=True) as store:
         zone = site(store).timezone
-        start_us = None if start is None else moment_us(start, zone)
-        end_us = None if end is None else moment_us(end, zone)
-        if start_us is not None and end_us is not None and start_us >= end_us:
+        asked = files.Question(
+            sensors=sensors or None,
+            start_us=None if start is None else moment_us(start, zone),
+            end_us=None if end is None else moment_us(end, zone),
+            every=Every(every),
+            with_uncounted=uncounted,
+        )
+        if asked.start_us is not None and asked.end_us is not None and asked.start_us >= asked.end_us:
             raise click.UsageError("--to must be later than --from")
-        names = list(sensors) or None
-        target = output if output is not None else sys.stdout
-        if table == "passages":
-            n_rows = files.export_passages(store, target, names, start_us, end_us, with_uncounted=uncounted)
-        elif table == "counts":
-            n_rows = files.export_counts(store, target, names, start_us, end_us, Every(every))
-        else:
-            n_rows = files.export_speeds(store, target, names, start_us, end_us, Every(every))
+        n_rows = _write(store, tables, asked, kind, partitioned=partitioned, output=output)
     if output is not None:
         click.echo(f"{output}: {n_rows} rows", err=True)
+
+
+def _check_usage(
+    tables: tuple[str, ...], kind: str, *, uncounted: bool, partitioned: bool, output: Path | None
+) -> None:
+    if uncounted and "passages" not in tables:
+        raise click.UsageError("--uncounted goes with passages only")
+    if len(set(tables)) != len(tables):
+        raise click.UsageError("each table goes in once")
+    if len(tables) > 1 and kind != "xlsx":
+        raise click.UsageError("several tables go together with --format xlsx only")
+    if kind in ("parquet", "xlsx") and output is None:
+        raise click.UsageError(f"{kind} needs --output FILE")
+    if partitioned and (tables != ("passages",) or kind != "parquet"):
+        raise click.UsageError("--partitioned goes with passages and --format parquet only")
+
+
+def _write(
+    store: Store,
+    tables: tuple[str, ...],
+    asked: Question,
+    kind: str,
+    *,
+    partitioned: bool,
+    output: Path | None,
+) -> int:
+    from ginnel import export as files
+
+    made = [files.TABLES[name](store, asked) for name in tables]
+    if partitioned and output is not None:
+        return files.write_partitioned(store, made[0], output)
+    return files.write(store, made, sys.stdout.buffer if output is None else output, files.Format(kind))

@@ -1,19 +1,23 @@
-"""Answers as files: CSV with a Data Package descriptor beside it.
+"""Answers as files, each with a descriptor beside it that says what its columns are.
 
 Only shows what `reports` answers: no sums, no SQL. A file appears whole or not at all.
 """
 
-from ginnel.export.columns import Column
-from ginnel.export.files import export_counts, export_passages, export_speeds
-from ginnel.export.tables import Table, counts_table, passages_table, speeds_table
+from ginnel.export.columns import Column, Kind
+from ginnel.export.files import Format, iter_lines, write, write_partitioned
+from ginnel.export.tables import TABLES, Question, Table, counts_table, passages_table, speeds_table
 
 __all__ = [
+    "TABLES",
     "Column",
+    "Format",
+    "Kind",
+    "Question",
     "Table",
     "counts_table",
-    "export_counts",
-    "export_passages",
-    "export_speeds",
+    "iter_lines",
     "passages_table",
     "speeds_table",
+    "write",
+    "write_partitioned",
 ]

@@ -3,9 +3,19 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from enum import StrEnum
 
 from ginnel.stats.speeds import PERCENTILE_METHOD
 from ginnel.words import Direction, Flag, MoverKind, Story
+
+
+class Kind(StrEnum):
+    """What the cells of a column are, by the names of the Table Schema standard."""
+
+    TEXT = "string"
+    MOMENT = "datetime"
+    NUMBER = "number"
+    WHOLE = "integer"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -13,128 +23,97 @@ class Column:
     """One column: what a reader must know to use it."""
 
     name: str
-    type: str  # of the Table Schema standard: string, datetime, number, integer
+    kind: Kind
     description: str
     unit: str = ""
+    decimals: int = 0  # of a number, as every kind of file has it
+    local: bool = False  # of a moment: by the site's clock, with its offset from UTC
     required: bool = False
     values: tuple[str, ...] = ()
 
 
-_DIRECTIONS = tuple(Direction)
-_SENSOR = Column(name="sensor", type="string", description="name of the sensor", required=True)
-_DIRECTION = Column(
-    name="direction",
-    type="string",
-    description="as the sensor sees it; the plain names of both ways are with the sensors below",
+def _text(name: str, description: str, *, required: bool = False, values: tuple[str, ...] = ()) -> Column:
+    return Column(name=name, kind=Kind.TEXT, description=description, required=required, values=values)
+
+
+def _moment(name: str, description: str, *, local: bool = False) -> Column:
+    return Column(name=name, kind=Kind.MOMENT, description=description, local=local, required=True)
+
+
+def _number(name: str, description: str, unit: str = "1", decimals: int = 4) -> Column:
+    return Column(name=name, kind=Kind.NUMBER, description=description, unit=unit, decimals=decimals)
+
+
+def _whole(name: str, description: str) -> Column:
+    return Column(name=name, kind=Kind.WHOLE, description=description, unit="1")
+
+
+_SENSOR = _text("sensor", "name of the sensor", required=True)
+_DIRECTION = _text(
+    "direction",
+    "as the sensor sees it; the site's plain names of both ways are told with each sensor",
     required=True,
-    values=_DIRECTIONS,
+    values=tuple(Direction),
 )
 _INTERVAL = (
     _SENSOR,
-    Column(
-        name="interval_start",
-        type="datetime",
-        description="start of the interval, with the offset from UTC that holds at the site then",
-        required=True,
-    ),
-    Column(
-        name="interval_end",
-        type="datetime",
-        description="end of the interval, which is not part of it",
-        required=True,
-    ),
+    _moment("interval_start", "start of the interval, by the site's clock", local=True),
+    _moment("interval_end", "end of the interval, which is not part of it, by the site's clock", local=True),
     _DIRECTION,
 )
+_NOT_COUNTED = tuple(story for story in Story if story is not Story.PASSAGE)
 
 PASSAGE_COLUMNS = (
-    Column(
-        name="passage_id",
-        type="string",
-        description="lasting name: the sensor, and the crossing in microseconds since 1970 UTC",
+    _text(
+        "passage_id",
+        "lasting name: the sensor, and the crossing in microseconds since 1970 UTC",
         required=True,
     ),
     _SENSOR,
-    Column(name="started_at", type="datetime", description="first heard, UTC", required=True),
-    Column(
-        name="crossed_at", type="datetime", description="beside or beneath the sensor, UTC", required=True
-    ),
-    Column(name="ended_at", type="datetime", description="last heard, UTC", required=True),
+    _moment("started_at", "first heard, UTC"),
+    _moment("crossed_at", "beside or beneath the sensor, UTC"),
+    _moment("ended_at", "last heard, UTC"),
     _DIRECTION,
-    Column(
-        name="direction_confidence",
-        type="number",
-        description="probability that the direction is right, 0.5 to 1; blank where it is unknown",
-        unit="1",
+    _number(
+        "direction_confidence",
+        "probability that the direction is right, 0.5 to 1; blank where it is unknown",
     ),
-    Column(name="speed_mps", type="number", description="speed along the path", unit="m/s"),
-    Column(name="speed_se_mps", type="number", description="standard error of the speed", unit="m/s"),
-    Column(
-        name="speed_band",
-        type="string",
-        description="speed band, in m/s, closed below and open above",
-    ),
-    Column(name="snr_db", type="number", description="signal to noise ratio", unit="dB"),
-    Column(
-        name="mover",
-        type="string",
-        description="what moved; blank where that cannot be told",
-        values=tuple(MoverKind),
-    ),
-    Column(
-        name="flags",
-        type="string",
-        description=(
-            "what to know before trusting the passage, parted by semicolons, from: "
-            + ", ".join([*(story for story in Story if story is not Story.PASSAGE), *Flag])
-            + "; turn-backs and fidgeting are no passages and do not count"
-        ),
+    _number("speed_mps", "speed along the path", "m/s"),
+    _number("speed_se_mps", "standard error of the speed", "m/s"),
+    _text("speed_band", "speed band, in m/s, closed below and open above"),
+    _number("snr_db", "signal to noise ratio", "dB", 2),
+    _text("mover", "what moved; blank where that cannot be told", values=tuple(MoverKind)),
+    _text(
+        "flags",
+        "what to know before trusting the passage, parted by semicolons, from: "
+        + ", ".join([*_NOT_COUNTED, *Flag])
+        + "; turn-backs and fidgeting are no passages and do not count",
     ),
 )
 
 COUNT_COLUMNS = (
     *_INTERVAL,
-    Column(
-        name="count",
-        type="integer",
-        description="passages counted while listening; blank where the interval was never listened to",
-        unit="1",
-    ),
-    Column(
-        name="count_low", type="number", description="lower exact 95 % Poisson limit of the count", unit="1"
-    ),
-    Column(
-        name="count_high", type="number", description="upper exact 95 % Poisson limit of the count", unit="1"
-    ),
-    Column(
-        name="corrected",
-        type="number",
-        description="count corrected by tallies; blank where there is no tally",
-        unit="1",
-    ),
-    Column(
-        name="coverage", type="number", description="share of the interval that was listened to", unit="1"
-    ),
-    Column(name="listened_s", type="number", description="time listened in the interval", unit="s"),
+    _whole("count", "passages counted while listening; blank where the interval was never listened to"),
+    _number("count_low", "lower exact 95 % Poisson limit of the count"),
+    _number("count_high", "upper exact 95 % Poisson limit of the count"),
+    _number("corrected", "count corrected by tallies; blank where there is no tally"),
+    _number("coverage", "share of the interval that was listened to", decimals=6),
+    _number("listened_s", "time listened in the interval", "s", 6),
 )
 
 SPEED_COLUMNS = (
     *_INTERVAL,
-    Column(
-        name="n",
-        type="integer",
-        description="passages with a measured speed; blank where the interval was never listened to",
-        unit="1",
-    ),
-    Column(name="mean_mps", type="number", description="mean over passages (time-mean speed)", unit="m/s"),
-    Column(name="space_mean_mps", type="number", description="harmonic mean (space-mean speed)", unit="m/s"),
-    Column(name="sd_mps", type="number", description="sample standard deviation, n - 1", unit="m/s"),
+    _whole("n", "passages with a measured speed; blank where the interval was never listened to"),
+    _number("mean_mps", "mean over passages (time-mean speed)", "m/s"),
+    _number("space_mean_mps", "harmonic mean (space-mean speed)", "m/s"),
+    _number("sd_mps", "sample standard deviation, n - 1", "m/s"),
     *(
-        Column(
-            name=f"p{percent}_mps",
-            type="number",
-            description=f"{percent}th percentile ({PERCENTILE_METHOD})",
-            unit="m/s",
-        )
+        _number(f"p{percent}_mps", f"{percent}th percentile ({PERCENTILE_METHOD})", "m/s")
         for percent in (15, 50, 85, 95)
     ),
 )
+
+
+def band_column(label: str) -> Column:
+    """Column of the passages in one speed band."""
+    return _whole(f"band_{label}", f"passages in the speed band {label} m/s, closed below and open above")

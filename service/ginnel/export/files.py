@@ -1,115 +1,115 @@
-"""Writing tables: to a file with its descriptor, or to a text stream."""
+"""Writing tables: to a file with its descriptor beside it, or to a stream."""
 
 from __future__ import annotations
 
-import csv
 import hashlib
 import json
-import os
-from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import replace
+from enum import StrEnum
 from pathlib import Path
-from typing import TextIO
+from typing import Any, BinaryIO
 
 from ginnel.errors import ExportError
-from ginnel.export.descriptor import descriptor
-from ginnel.export.tables import Table, counts_table, passages_table, speeds_table
-from ginnel.reports import Every
+from ginnel.export.cells import n_rows
+from ginnel.export.descriptor import descriptor, resource
+from ginnel.export.draft import check_place, whole, whole_folder
+from ginnel.export.lines import csv_header, csv_lines, json_lines
+from ginnel.export.tables import Table
 from ginnel.store import Store
 
-Output = Path | TextIO
+
+class Format(StrEnum):
+    """Kinds of files."""
+
+    CSV = "csv"
+    JSONL = "jsonl"
+    PARQUET = "parquet"
+    XLSX = "xlsx"
 
 
-def export_passages(
-    store: Store,
-    output: Output,
-    sensors: Sequence[str] | None = None,
-    start_us: int | None = None,
-    end_us: int | None = None,
-    *,
-    with_uncounted: bool = False,
-) -> int:
-    """Write passages as CSV; returns the number of rows."""
-    return write(
-        store, passages_table(store, sensors, start_us, end_us, with_uncounted=with_uncounted), output
-    )
+def write(store: Store, tables: Sequence[Table], output: Path | BinaryIO, kind: Format = Format.CSV) -> int:
+    """Write a table to a stream, or to a file with its descriptor ``NAME.datapackage.json`` beside it.
 
-
-def export_counts(
-    store: Store,
-    output: Output,
-    sensors: Sequence[str] | None = None,
-    start_us: int | None = None,
-    end_us: int | None = None,
-    every: Every = Every.HOUR,
-) -> int:
-    """Write counts as CSV; returns the number of rows."""
-    return write(store, counts_table(store, sensors, start_us, end_us, every), output)
-
-
-def export_speeds(
-    store: Store,
-    output: Output,
-    sensors: Sequence[str] | None = None,
-    start_us: int | None = None,
-    end_us: int | None = None,
-    every: Every = Every.HOUR,
-) -> int:
-    """Write speeds as CSV; returns the number of rows."""
-    return write(store, speeds_table(store, sensors, start_us, end_us, every), output)
-
-
-def write(store: Store, table: Table, output: Output) -> int:
-    """Write a table to a text stream, or to a file with its descriptor ``NAME.datapackage.json`` beside it.
-
-    A file appears whole or not at all; one of the same name is replaced.
+    A workbook may hold several tables, other files hold one. A file appears whole or not at all; one
+    of the same name is replaced. Returns the number of rows.
 
     Raises
     ------
     ExportError
-        The file cannot be written.
+        The file cannot be written, or this kind of file needs a library that is not there.
     """
+    if len(tables) != 1 and kind is not Format.XLSX:
+        raise ExportError("only a workbook (xlsx) holds more than one table")
     if not isinstance(output, Path):
-        return write_csv(table, output)
-    path = output.resolve()
-    if path.exists() and not path.is_file():
-        raise ExportError(f"{output} is not a file: give a file name, or none for standard output")
-    if not path.parent.is_dir():
-        raise ExportError(f"{output} cannot be written: there is no folder {output.parent}: make it first")
+        if kind not in _LINES:
+            raise ExportError(f"{kind.value} needs a file: give its name")
+        return _write_lines(tables[0], output, kind)
+    path = check_place(output)
     beside = path.with_name(f"{path.stem}.datapackage.json")
-    with _whole(path) as draft:
-        with draft.open("w", encoding="utf-8", newline="") as stream:
-            n_rows = write_csv(table, stream)
+    with whole(path) as draft:
+        written = _write_file(tables, draft, kind)
         with draft.open("rb") as data:
             sha256 = hashlib.file_digest(data, "sha256").hexdigest()
-        facts = descriptor(store, table, path.name, draft.stat().st_size, sha256)
-        with _whole(beside) as note:
-            note.write_text(json.dumps(facts, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
-    return n_rows
+        size = {"bytes": draft.stat().st_size, "hash": f"sha256:{sha256}"}
+        resources = [resource(table, kind.value, path.name) | size for table in tables]
+        with whole(beside) as note:
+            note.write_text(_json(descriptor(store, tables, resources)), encoding="utf-8")
+    return written
 
 
-def write_csv(table: Table, stream: TextIO) -> int:
-    """Write header and rows by RFC 4180; returns the number of rows."""
-    writer = csv.writer(stream, lineterminator="\r\n")
-    writer.writerow(column.name for column in table.columns)
-    n_rows = 0
-    for row in table.rows:
-        writer.writerow(row)
-        n_rows += 1
-    return n_rows
+def write_partitioned(store: Store, table: Table, folder: Path) -> int:
+    """Write passages as a Parquet data set in a new folder, with its descriptor inside; returns the rows.
+
+    Raises
+    ------
+    ExportError
+        There is something at that name already, or it cannot be written.
+    """
+    from ginnel.export.parquet import write_dataset
+
+    with whole_folder(folder.absolute()) as draft:
+        written = write_dataset(table, draft)
+        parts = sorted(part.relative_to(draft).as_posix() for part in draft.rglob("*.parquet"))
+        inside = replace(table, columns=tuple(column for column in table.columns if column.name != "sensor"))
+        note = descriptor(store, [table], [resource(inside, Format.PARQUET.value, parts)])
+        (draft / "datapackage.json").write_text(_json(note), encoding="utf-8")
+    return written
 
 
-@contextmanager
-def _whole(path: Path) -> Iterator[Path]:
-    """Give a draft to write, which takes the file's name once it is on the disk, or goes."""
-    draft = path.with_name(f".{path.name}.{os.getpid()}.draft")
-    try:
-        draft.touch()
-        yield draft
-        with draft.open("rb+") as stream:
-            os.fsync(stream.fileno())
-        draft.replace(path)
-    except OSError as error:
-        raise ExportError(f"{path} cannot be written: {error.strerror or error}") from error
-    finally:
-        draft.unlink(missing_ok=True)
+def iter_lines(table: Table, kind: Format = Format.CSV) -> Iterator[bytes]:
+    """Give a table as pieces of text, in UTF-8, each some thousands of whole lines."""
+    if kind is Format.CSV:
+        yield csv_header(table.columns)
+    for batch in table.batches:
+        yield _LINES[kind](table.columns, batch, table.zone)
+
+
+_LINES: dict[Format, Callable[..., bytes]] = {Format.CSV: csv_lines, Format.JSONL: json_lines}
+
+
+def _json(facts: dict[str, Any]) -> str:
+    return json.dumps(facts, indent=2, ensure_ascii=False) + "\n"
+
+
+def _write_lines(table: Table, stream: BinaryIO, kind: Format) -> int:
+    written = 0
+    if kind is Format.CSV:
+        stream.write(csv_header(table.columns))
+    for batch in table.batches:
+        stream.write(_LINES[kind](table.columns, batch, table.zone))
+        written += n_rows(batch)
+    return written
+
+
+def _write_file(tables: Sequence[Table], path: Path, kind: Format) -> int:
+    if kind is Format.XLSX:
+        from ginnel.export.workbook import write_workbook
+
+        return write_workbook(tables, path)
+    if kind is Format.PARQUET:
+        from ginnel.export.parquet import write_parquet
+
+        return write_parquet(tables[0], path)
+    with path.open("wb") as stream:
+        return _write_lines(tables[0], stream, kind)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 import hashlib
 import json
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
@@ -14,8 +14,8 @@ from typing import Any
 import pytest
 
 from ginnel.errors import ExportError
-from ginnel.export import Table, export_counts, export_passages, export_speeds, passages_table
-from ginnel.export.files import write
+from ginnel.export import TABLES, Format, Question, Table, passages_table, write
+from ginnel.export.cells import Batch
 from ginnel.store import Store, record_span
 from ginnel.words import Direction, Flag, Mounting, MoverKind, Passage, Sensor, Span, Story
 
@@ -27,11 +27,10 @@ NORTH = Sensor(
     receding_name="to the street",
     mounting=Mounting(beam_width_deg=(80.0, 40.0), since_us=NINE),
 )
-EXPORTS: dict[str, Callable[..., int]] = {
-    "passages": export_passages,
-    "counts": export_counts,
-    "speeds": export_speeds,
-}
+
+
+def export(store: Store, name: str, path: Path, kind: Format = Format.CSV) -> int:
+    return write(store, [TABLES[name](store, Question())], path, kind)
 
 
 @pytest.fixture
@@ -65,13 +64,13 @@ def described(path: Path) -> dict[str, Any]:
 
 
 @pytest.mark.filterwarnings("default")  # the outside tool's own
-@pytest.mark.parametrize("subject", EXPORTS)
+@pytest.mark.parametrize("subject", TABLES)
 def test_an_outside_tool_finds_file_and_descriptor_valid(filled: Store, tmp_path: Path, subject: str) -> None:
     """frictionless knows the Data Package standard; it reads every cell by our descriptor."""
     from frictionless import validate
 
     path = tmp_path / f"{subject}.csv"
-    n_rows = EXPORTS[subject](filled, path)
+    n_rows = export(filled, subject, path)
     assert n_rows > 0
     report = validate(str(tmp_path / f"{subject}.datapackage.json"))
     assert report.valid, report.to_summary()
@@ -83,10 +82,10 @@ def test_an_outside_tool_finds_file_and_descriptor_valid(filled: Store, tmp_path
     assert not validate(str(tmp_path / f"{subject}.datapackage.json")).valid
 
 
-@pytest.mark.parametrize("subject", EXPORTS)
+@pytest.mark.parametrize("subject", TABLES)
 def test_the_descriptor_describes_the_file(filled: Store, tmp_path: Path, subject: str) -> None:
     path = tmp_path / f"{subject}.csv"
-    EXPORTS[subject](filled, path)
+    export(filled, subject, path)
     facts = described(path)
     (resource,) = facts["resources"]
     data = path.read_bytes()
@@ -108,23 +107,23 @@ def test_the_descriptor_describes_the_file(filled: Store, tmp_path: Path, subjec
 
 
 def test_the_percentile_method_is_stated(filled: Store, tmp_path: Path) -> None:
-    export_speeds(filled, tmp_path / "speeds.csv")
+    export(filled, "speeds", tmp_path / "speeds.csv")
     (resource,) = described(tmp_path / "speeds.csv")["resources"]
     (p85,) = [field for field in resource["schema"]["fields"] if field["name"] == "p85_mps"]
     assert "Hyndman-Fan type 7" in p85["description"]
 
 
 def test_exporting_again_gives_the_same_bytes(filled: Store, tmp_path: Path) -> None:
-    for subject, export in EXPORTS.items():
-        export(filled, tmp_path / f"{subject}.csv")
+    for subject in TABLES:
+        export(filled, subject, tmp_path / f"{subject}.csv")
         before = {path.name: path.read_bytes() for path in tmp_path.glob(f"{subject}*")}
-        export(filled, tmp_path / f"{subject}.csv")
+        export(filled, subject, tmp_path / f"{subject}.csv")
         assert {path.name: path.read_bytes() for path in tmp_path.glob(f"{subject}*")} == before
         assert len(before) == 2
 
 
 def test_times_read_back_to_the_microsecond(filled: Store, tmp_path: Path) -> None:
-    export_passages(filled, tmp_path / "p.csv")
+    export(filled, "passages", tmp_path / "p.csv")
     with (tmp_path / "p.csv").open(encoding="utf-8", newline="") as stream:
         first = next(csv.DictReader(stream))
     crossed = datetime.fromisoformat(first["crossed_at"])
@@ -134,28 +133,30 @@ def test_times_read_back_to_the_microsecond(filled: Store, tmp_path: Path) -> No
 
 def test_a_failing_export_leaves_the_old_file(filled: Store, tmp_path: Path) -> None:
     path = tmp_path / "passages.csv"
-    export_passages(filled, path)
+    export(filled, "passages", path)
     before = {one.name: one.read_bytes() for one in tmp_path.iterdir()}
 
-    def broken() -> Iterator[list[str]]:
-        yield ["half"]
+    whole = list(passages_table(filled, Question()).batches)
+
+    def broken() -> Iterator[Batch]:
+        yield from whole
         raise RuntimeError("the store went away")
 
-    table: Table = replace(passages_table(filled), rows=broken())
+    table: Table = replace(passages_table(filled, Question()), batches=broken())
     with pytest.raises(RuntimeError, match="went away"):
-        write(filled, table, path)
+        write(filled, [table], path)
     assert {one.name: one.read_bytes() for one in tmp_path.iterdir()} == before
 
 
 def test_a_file_that_cannot_be_written_is_one_clear_line(filled: Store, tmp_path: Path) -> None:
     with pytest.raises(ExportError, match=r"there is no folder .*nowhere: make it first"):
-        export_passages(filled, tmp_path / "nowhere" / "p.csv")
+        export(filled, "passages", tmp_path / "nowhere" / "p.csv")
     with pytest.raises(ExportError, match="is not a file"):
-        export_passages(filled, tmp_path)
+        export(filled, "passages", tmp_path)
 
 
 def test_new_files_have_the_usual_permissions(filled: Store, tmp_path: Path) -> None:
     (tmp_path / "plain").touch()
-    export_counts(filled, tmp_path / "c.csv")
+    export(filled, "counts", tmp_path / "c.csv")
     assert (tmp_path / "c.csv").stat().st_mode == (tmp_path / "plain").stat().st_mode
     assert (tmp_path / "c.datapackage.json").stat().st_mode == (tmp_path / "plain").stat().st_mode
