@@ -121,6 +121,26 @@ class Sensor:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Door:
+    """A sensor at a way into a space, and how well it counts."""
+
+    sensor: str
+    entering: Direction  # approaching or receding
+    recall: float = 0.95  # share of those who go through that is counted
+    recall_se: float = 0.02  # its standard error, each way
+    direction_error: float = 0.02  # share counted as going the other way
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Space:
+    """A room, wing or yard whose doors are all watched."""
+
+    name: str
+    empty_at_min: int  # when nobody is in it: minutes of the site's clock after midnight
+    doors: tuple[Door, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Block:
     """Consecutive samples of a capture with the time of the first one.
 

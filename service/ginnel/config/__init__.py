@@ -10,19 +10,26 @@ from ginnel.config.loading import DEFAULT_FILE, default_config_text, find_file, 
 from ginnel.config.sections import ListenSettings, SiteSettings, StoreSettings, WebSettings
 from ginnel.config.sensor import DirectionSettings, MountingChange, MountingSettings, SensorSettings
 from ginnel.config.source import SourceKind, SourceSettings
+from ginnel.config.space import DoorSettings, SpaceSettings
 from ginnel.config.tree import Settings
+from ginnel.config.upkeep import BackupSettings, NotifySettings, RetentionSettings
 
 __all__ = [
     "DEFAULT_FILE",
+    "BackupSettings",
     "DirectionSettings",
+    "DoorSettings",
     "ListenSettings",
     "MountingChange",
     "MountingSettings",
+    "NotifySettings",
+    "RetentionSettings",
     "SensorSettings",
     "Settings",
     "SiteSettings",
     "SourceKind",
     "SourceSettings",
+    "SpaceSettings",
     "StoreSettings",
     "WebSettings",
     "default_config_text",

@@ -79,7 +79,8 @@ def _key(loc: tuple[str, ...]) -> str:
 
 def _what(error: dict[str, object], loc: tuple[str, ...], root: type[BaseModel]) -> str:
     if error["type"] == "extra_forbidden":
-        near = difflib.get_close_matches(loc[-1], set(_known_keys(root)) - {loc[-1]}, n=1)
+        near = difflib.get_close_matches(loc[-1], _keys_beside(loc, root), n=1)
+        near = near or difflib.get_close_matches(loc[-1], set(_known_keys(root)) - {loc[-1]}, n=1)
         return "unknown key" + (f"; did you mean {near[0]}?" if near else "")
     if error["type"] == "string_pattern_mismatch" and loc[-1] in _PATTERNS:
         return f"{_PATTERNS[loc[-1]]} (it is {error.get('input')!r})"
@@ -87,6 +88,16 @@ def _what(error: dict[str, object], loc: tuple[str, ...], root: type[BaseModel])
     given = error.get("input")
     shown = f" (it is {given!r})" if isinstance(given, str | int | float) else ""
     return message + shown
+
+
+def _keys_beside(loc: tuple[str, ...], root: type[BaseModel]) -> list[str]:
+    """Keys that the table of an unknown key does have."""
+    schema = root.model_json_schema()
+    table = schema
+    for part in loc[:-1]:
+        inner = table["items"] if part.isdigit() else table["properties"][part]
+        table = schema["$defs"][inner["$ref"].rsplit("/", 1)[-1]] if "$ref" in inner else inner
+    return list(table.get("properties", {}))
 
 
 def _known_keys(model: type[BaseModel]) -> list[str]:

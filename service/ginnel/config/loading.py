@@ -17,6 +17,7 @@ from ginnel.config.faults import describe
 from ginnel.config.sections import ListenSettings, StoreSettings
 from ginnel.config.source import SourceSettings
 from ginnel.config.tree import Settings
+from ginnel.config.upkeep import BackupSettings
 from ginnel.errors import ConfigError
 
 DEFAULT_FILE = Path("ginnel.toml")
@@ -70,6 +71,9 @@ def _anchored(raw: dict[str, Any], folder: Path) -> dict[str, Any]:
     listen = raw.setdefault("listen", {})
     if isinstance(listen, dict):
         _anchor(listen, "state", folder, ListenSettings().state)
+    backup = raw.setdefault("backup", {})
+    if isinstance(backup, dict):
+        _anchor(backup, "folder", folder, BackupSettings().folder)
     sensors = raw.get("sensor", [])
     if isinstance(sensors, list):
         for sensor in (s for s in sensors if isinstance(s, dict)):
@@ -79,6 +83,9 @@ def _anchored(raw: dict[str, Any], folder: Path) -> dict[str, Any]:
                 _anchor(source, "path", folder, SourceSettings().path if is_folder else None)
                 _anchor(source, "archive", folder, None)
         raw["sensor"] = {str(number): sensor for number, sensor in enumerate(sensors)}
+    spaces = raw.get("space", [])
+    if isinstance(spaces, list):
+        raw["space"] = {str(number): space for number, space in enumerate(spaces)}
     return raw
 
 

@@ -68,6 +68,7 @@ class SensorSettings(Section):
     min_speed_mps: float = Field(default=0.3, gt=0, le=100)
     max_speed_mps: float = Field(default=5.0, gt=0, le=100)
     highpass_hz: float | None = Field(default=None, gt=0, le=10_000)
+    path_width_m: float | None = Field(default=None, gt=0, le=100)
     mounting: MountingSettings = MountingSettings()
     mounting_change: Annotated[tuple[MountingChange, ...], Listed] = ()
     directions: DirectionSettings = DirectionSettings()

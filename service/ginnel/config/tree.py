@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from typing import Annotated
 
-from pydantic import field_validator
+from pydantic import field_validator, model_validator
 from pydantic_settings import BaseSettings, PydanticBaseSettingsSource, SettingsConfigDict
 
 from ginnel.config.section import Listed
 from ginnel.config.sections import ListenSettings, SiteSettings, StoreSettings, WebSettings
 from ginnel.config.sensor import SensorSettings
+from ginnel.config.space import SpaceSettings
+from ginnel.config.upkeep import BackupSettings, NotifySettings, RetentionSettings
 from ginnel.errors import ConfigError
 
 
@@ -23,8 +25,12 @@ class Settings(BaseSettings):
     site: SiteSettings = SiteSettings()
     store: StoreSettings = StoreSettings()
     listen: ListenSettings = ListenSettings()
+    retention: RetentionSettings = RetentionSettings()
+    backup: BackupSettings = BackupSettings()
+    notify: NotifySettings = NotifySettings()
     web: WebSettings = WebSettings()
     sensor: Annotated[tuple[SensorSettings, ...], Listed] = ()
+    space: Annotated[tuple[SpaceSettings, ...], Listed] = ()
 
     @field_validator("sensor")
     @classmethod
@@ -34,6 +40,19 @@ class Settings(BaseSettings):
         if doubled:
             raise ValueError(f"two sensors are called {doubled[0]}")
         return sensors
+
+    @model_validator(mode="after")
+    def _doors_have_sensors(self) -> Settings:
+        names = [space.name for space in self.space]
+        doubled = sorted({name for name in names if names.count(name) > 1})
+        if doubled:
+            raise ValueError(f"two spaces are called {doubled[0]}")
+        known = {sensor.name for sensor in self.sensor}
+        for space in self.space:
+            for door in space.door:
+                if door.sensor not in known:
+                    raise ValueError(f"space {space.name}: no sensor is called {door.sensor}")
+        return self
 
     @classmethod
     def settings_customise_sources(

@@ -8,8 +8,9 @@ from functools import lru_cache
 
 import numpy as np
 
+from ginnel.reports.cells import iter_cells
 from ginnel.reports.intervals import Every, period
-from ginnel.reports.parts import chosen_sensors, iter_cells, listened
+from ginnel.reports.parts import chosen_sensors
 from ginnel.stats import poisson_limits
 from ginnel.store import Store
 from ginnel.words import US_PER_S, Direction
@@ -100,15 +101,16 @@ def iter_counts(
     of it that was, ``expanded`` what the whole may have had. A crossing may lie just outside the time
     listened; it is counted all the same.
     """
-    for cell in iter_cells(store, sensors, start_us, end_us, every, tz, together=together):
-        count = int(cell.part.count[cell.i]) if cell.known else None
-        low, high = (None, None) if count is None else _limits(count)
+    names = chosen_sensors(store, sensors)
+    cut_up = period(store, every, start_us, end_us, tz, names)
+    for cell in iter_cells(store, names, cut_up, together=together):
+        low, high = (None, None) if cell.count is None else _limits(cell.count)
         yield CountRow(
             sensor=cell.sensor,
             interval_start_us=cell.start_us,
             interval_end_us=cell.end_us,
-            direction=cell.part.direction,
-            count=count,
+            direction=cell.direction,
+            count=cell.count,
             count_low=low,
             count_high=high,
             corrected=None,
@@ -130,14 +132,13 @@ def coverage(
     cut_up = period(store, every, start_us, end_us, tz, names)
     return tuple(
         CoverageRow(
-            sensor=sensor,
-            interval_start_us=int(cut_up.edges_us[i]),
-            interval_end_us=int(cut_up.edges_us[i + 1]),
-            coverage=float(listened_us / (cut_up.edges_us[i + 1] - cut_up.edges_us[i])),
-            listened_s=float(listened_us / US_PER_S),
+            sensor=cell.sensor,
+            interval_start_us=cell.start_us,
+            interval_end_us=cell.end_us,
+            coverage=cell.coverage,
+            listened_s=cell.listened_us / US_PER_S,
         )
-        for sensor in names
-        for i, listened_us in enumerate(listened(store, sensor, cut_up))
+        for cell in iter_cells(store, names, cut_up, together=True)
     )
 
 

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from itertools import groupby
 
 import numpy as np
 
 from ginnel import store as log
-from ginnel.reports.intervals import Every
-from ginnel.reports.parts import iter_cells
+from ginnel.reports.cells import iter_cells
+from ginnel.reports.intervals import Every, period
+from ginnel.reports.parts import chosen_sensors
 from ginnel.stats import SpeedSummary, band_counts, summarise_speeds
 from ginnel.store import Store
 from ginnel.words import Direction, FloatArray
@@ -55,17 +57,26 @@ def iter_speeds(
 
     ``n`` is the number of passages with a measured speed, which may be fewer than passed.
     """
+    names = chosen_sensors(store, sensors)
+    cut_up = period(store, every, start_us, end_us, tz, names)
     bands = {sensor.name: sensor.speed_bands_mps for sensor in log.sensors(store)}
-    for cell in iter_cells(store, sensors, start_us, end_us, every, tz, together=together):
-        speed_mps = cell.part.speed_mps(cell.i)
-        yield SpeedRow(
-            sensor=cell.sensor,
-            interval_start_us=cell.start_us,
-            interval_end_us=cell.end_us,
-            direction=cell.part.direction,
-            summary=summarise_speeds(speed_mps) if cell.known else None,
-            bands=tuple(band_counts(speed_mps, bands[cell.sensor]).tolist()) if cell.known else None,
-        )
+    for sensor, cells in groupby(
+        iter_cells(store, names, cut_up, together=together), lambda cell: cell.sensor
+    ):
+        passages = log.passage_arrays(store, sensor, int(cut_up.edges_us[0]), int(cut_up.edges_us[-1]))
+        ways = {direction: passages.of(direction) for direction in (None, *Direction)}
+        for cell in cells:
+            own = ways[cell.direction]
+            first, last = np.searchsorted(own.crossed_us, [cell.start_us, cell.end_us])
+            speed_mps = own.speed_mps[first:last]
+            yield SpeedRow(
+                sensor=sensor,
+                interval_start_us=cell.start_us,
+                interval_end_us=cell.end_us,
+                direction=cell.direction,
+                summary=None if cell.count is None else summarise_speeds(speed_mps),
+                bands=None if cell.count is None else tuple(band_counts(speed_mps, bands[sensor]).tolist()),
+            )
 
 
 def speed_histogram(
