@@ -59,7 +59,7 @@ def write(store: Store, tables: Sequence[Table], output: Path | BinaryIO, kind: 
 
 
 def write_partitioned(store: Store, table: Table, folder: Path) -> int:
-    """Write passages as a Parquet data set in a new folder, with its descriptor inside; returns the rows.
+    """Write passages as a Parquet data set in a new folder, with its descriptor beside it; returns the rows.
 
     Raises
     ------
@@ -68,12 +68,16 @@ def write_partitioned(store: Store, table: Table, folder: Path) -> int:
     """
     from ginnel.export.parquet import write_dataset
 
-    with whole_folder(folder.absolute()) as draft:
+    path = folder.absolute()
+    # beside and not inside: some readers take every file of the folder for a part
+    beside = path.with_name(f"{path.name}.datapackage.json")
+    with whole_folder(path) as draft:
         written = write_dataset(table, draft)
         parts = sorted(part.relative_to(draft).as_posix() for part in draft.rglob("*.parquet"))
         inside = replace(table, columns=tuple(column for column in table.columns if column.name != "sensor"))
-        note = descriptor(store, [table], [resource(inside, Format.PARQUET.value, parts)])
-        (draft / "datapackage.json").write_text(_json(note), encoding="utf-8")
+        facts = resource(inside, Format.PARQUET.value, [f"{path.name}/{part}" for part in parts])
+        with whole(beside) as note:
+            note.write_text(_json(descriptor(store, [table], [facts])), encoding="utf-8")
     return written
 
 

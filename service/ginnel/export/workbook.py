@@ -48,6 +48,9 @@ def write_workbook(tables: Sequence[Table], path: Path) -> int:
             book.close()
         except exceptions.FileCreateError as error:
             raise error.args[0] from error  # the OSError that it hides
+        finally:
+            for sheet in book.worksheets():
+                sheet.row_data_fh.close()  # left open by the library where the work breaks off
     return written
 
 
