@@ -12,6 +12,8 @@
     +-- StoreError           the log cannot be read or written
         +-- StoreBusyError       locked or unreachable: try again
         +-- SpanRefusedError     contradicts what is stored: trying again will not help
+        +-- StoreFullError       no room on its disk: trying again helps once there is
+        +-- StoreDamagedError    the file is broken: `ginnel store restore`
         +-- SchemaMismatchError  made by another version: `ginnel store upgrade`
 
 Each message is one line that says what, where and how to mend it.
@@ -56,6 +58,14 @@ class StoreBusyError(StoreError):
 
 class SpanRefusedError(StoreError):
     """A span contradicts what is stored; trying again will not help."""
+
+
+class StoreFullError(StoreError):
+    """There is no room on the store's disk; trying again helps once there is."""
+
+
+class StoreDamagedError(StoreError):
+    """The store's file is broken; `ginnel store restore` takes the last backup."""
 
 
 class SchemaMismatchError(StoreError):

@@ -63,6 +63,7 @@ def test_listened_until_is_the_end_of_the_sensors_own_last_span(store: Store) ->
     record_span(store, NORTH, span(0, 60), [], "1")
     record_span(store, NORTH, span(100, 160), [], "1")
     record_span(store, Sensor(name="other"), span(0, 900), [], "1")
+    extend_span(store, NORTH, replace(span(9000, 9060), clock_trusted=False), [], "1")  # who knows when
     assert listened_until_us(store, NORTH.name) == span(100, 160).ended_us
 
 
@@ -100,6 +101,16 @@ def test_a_span_whose_date_was_wrong_moves_with_its_passages_and_is_trusted_then
     grown = replace(moved, ended_us=moved.ended_us + 10 * S)
     assert extend_span(store, NORTH, grown, [shifted(passage(65), by_us)], "1") == SpanChange(added=1)
     assert len(list(iter_passages(store))) == 6
+    # nor do both once more, as after a kill between storing and remembering that it was stored
+    before_again = logged(store)
+    if abs(by_s) < 60:
+        with pytest.raises(SpanRefusedError):
+            extend_span(store, NORTH, untrusted, found, "1")
+    else:
+        extend_span(store, NORTH, untrusted, found, "1")
+        assert redate_span(store, NORTH.name, untrusted.started_us, new_start_us)
+    assert logged(store) == before_again
+    assert len(spans(store)) == 2
 
 
 def test_the_hours_that_a_span_leaves_and_comes_to_are_rolled_up_again(store: Store) -> None:

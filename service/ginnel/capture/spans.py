@@ -82,7 +82,7 @@ def arrange(recordings: Sequence[Recording]) -> Arrangement:
             refused.append(fault)
             continue
         for segment in recording.segments:
-            if not runs or segment.started_us - runs[-1].ended_us > _tolerance_us(recording.sample_rate_hz):
+            if not runs or segment.started_us - runs[-1].ended_us > joins_within_us(recording.sample_rate_hz):
                 runs.append(_Run(segment.started_us, recording.sample_rate_hz))
             runs[-1].add(recording, segment)
     spans = [run.to_recorded_span() for run in runs]
@@ -97,7 +97,8 @@ def arrange(recordings: Sequence[Recording]) -> Arrangement:
     return Arrangement(spans=tuple(spans), gaps=gaps, refused=tuple(refused))
 
 
-def _tolerance_us(sample_rate_hz: float) -> float:
+def joins_within_us(sample_rate_hz: float) -> float:
+    """How far two pieces may lie apart, or overlap, and still join."""
     return _JOINS_WITHIN_SAMPLES * US_PER_S / sample_rate_hz + _ROUNDING_US
 
 
@@ -127,7 +128,7 @@ class _Run:
 
 def _misfit(run: _Run, recording: Recording) -> CaptureError | None:
     hole_us = recording.started_us - run.ended_us
-    tolerance_us = _tolerance_us(run.sample_rate_hz)
+    tolerance_us = joins_within_us(run.sample_rate_hz)
     if hole_us < -tolerance_us:
         return CaptureTimeError(
             f"{recording.path}: starts at {utc_text(recording.started_us)}, {-hole_us / US_PER_S:.6g} s "

@@ -19,10 +19,12 @@ COMMANDS = {
     "demo": "See it all work on invented data, with nothing to configure.",
     "export": "Write passages, counts or speeds as files.",
     "init": "Write a commented ginnel.toml and an empty store.",
+    "listen": "Listen live to all sensors, as a service.",
     "replay": "Find the passages in recorded captures and log them.",
     "serve": "Show the dashboard.",
     "simulate": "Make captures with known truth.",
     "store": "Look after the log on disk.",
+    "users": "Say who may see the dashboard.",
 }
 
 

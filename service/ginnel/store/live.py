@@ -115,8 +115,14 @@ def redate_span(store: Store, sensor_name: str, started_us: int, new_started_us:
             started_us=new_started_us, ended_us=known.ended_us + by_us, sample_rate_hz=known.sample_rate_hz
         )
         for other in overlapping(connection, sensor_id, new):
-            if other.id != known.id:
-                raise SpanRefusedError(overlap_text(Sensor(name=sensor_name), new, other))
+            if other.id == known.id:
+                continue
+            if other.started_us == new.started_us and other.redated_by_us == by_us:
+                # it was moved before, then stored under its old date once more
+                connection.execute(delete(SpanRow).where(SpanRow.id == known.id))
+                connection.execute(delete(PassageRow).where(*of_span(sensor_id, old)))
+                return True
+            raise SpanRefusedError(overlap_text(Sensor(name=sensor_name), new, other))
         n_codes = len(PassageCodes._fields)
         rows = stored_rows(connection, sensor_id, old)
         moved = [
@@ -139,12 +145,12 @@ def redate_span(store: Store, sensor_name: str, started_us: int, new_started_us:
 
 
 def listened_until_us(store: Store, sensor_name: str) -> int | None:
-    """End of a sensor's last span; None where it has none."""
+    """End of a sensor's last span whose date can be trusted; None where it has none."""
     with store.reading() as connection:
         return connection.execute(
             select(func.max(SpanRow.ended_us))
             .join(SensorRow, SensorRow.id == SpanRow.sensor_id)
-            .where(SensorRow.name == sensor_name)
+            .where(SensorRow.name == sensor_name, SpanRow.clock_trusted)
         ).scalar()
 
 
