@@ -126,30 +126,30 @@ def _calendar_edges(start_us: int, end_us: int, every: Every, zone: tzinfo) -> I
 def _clock_edges(first_us: int, last_us: int, step_us: int, zone: tzinfo) -> IntArray:
     """Every moment at which the local clock comes to show another multiple of a step."""
     pieces = []
-    bounds = [first_us, *_offset_changes(first_us, last_us, zone), last_us]
+    bounds = [first_us, *offset_changes(first_us, last_us, zone), last_us]
     for begin_us, stop_us in pairwise(bounds):
-        offset_us = _offset_us(begin_us, zone)
-        local_us = begin_us + offset_us
-        aligned_us = -(-local_us // step_us) * step_us - offset_us
+        ahead_us = offset_us(begin_us, zone)
+        local_us = begin_us + ahead_us
+        aligned_us = -(-local_us // step_us) * step_us - ahead_us
         inner = np.arange(aligned_us, stop_us, step_us, dtype=np.int64)
-        shown_before = (begin_us - 1 + _offset_us(begin_us - 1, zone)) // step_us
+        shown_before = (begin_us - 1 + offset_us(begin_us - 1, zone)) // step_us
         if aligned_us != begin_us and (begin_us == first_us or shown_before != local_us // step_us):
             inner = np.concatenate([[begin_us], inner])
         pieces.append(inner)
     return np.concatenate([*pieces, [last_us]])
 
 
-def _offset_changes(first_us: int, last_us: int, zone: tzinfo) -> list[int]:
+def offset_changes(first_us: int, last_us: int, zone: tzinfo) -> list[int]:
     """Moments at which the zone's offset from UTC changes; at most one a day is looked for."""
     changes = []
     looks = [*range(first_us, last_us, DAY_US), last_us]
     for low_us, high_us in pairwise(looks):
-        before = _offset_us(low_us, zone)
-        if before == _offset_us(high_us, zone):
+        before = offset_us(low_us, zone)
+        if before == offset_us(high_us, zone):
             continue
         while high_us - low_us > 1:
             middle_us = (low_us + high_us) // 2
-            if _offset_us(middle_us, zone) == before:
+            if offset_us(middle_us, zone) == before:
                 low_us = middle_us
             else:
                 high_us = middle_us
@@ -157,7 +157,8 @@ def _offset_changes(first_us: int, last_us: int, zone: tzinfo) -> list[int]:
     return changes
 
 
-def _offset_us(moment_us: int, zone: tzinfo) -> int:
+def offset_us(moment_us: int, zone: tzinfo) -> int:
+    """Tell how far a zone's clock is ahead of UTC."""
     offset = from_us(moment_us, zone).utcoffset()
     assert offset is not None  # noqa: S101 (a zone always has one)
     return offset // timedelta(microseconds=1)

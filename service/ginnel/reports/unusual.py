@@ -15,8 +15,14 @@ from ginnel.reports.calendar import calendar
 from ginnel.reports.flow import Flow, flow
 from ginnel.reports.intervals import Every, cut
 from ginnel.reports.volumes import by_day, complete
-from ginnel.stats.unusual import against_history, chance_of_none, silent_runs, trend
-from ginnel.stats.volumes import group_means
+from ginnel.stats.unusual import (
+    against_history,
+    chance_of_none,
+    runs,
+    silent_runs,
+    trend,
+    usual_but_for_silence,
+)
 from ginnel.store import Store
 from ginnel.times import from_us, to_us
 from ginnel.words import Direction, FloatArray
@@ -29,7 +35,6 @@ UNLIKELY = 1e-6
 #: Loss of level over the stretch and its history before it is told of, and its probability by chance.
 FADED_DB = 3.0
 _FADED_P = 1e-3
-_LONG_SILENCE_H = 24
 _HOURS_A_WEEK = 7 * 24
 
 
@@ -85,7 +90,7 @@ def _far_off(name: str, hours: Flow, counts: FloatArray, group: NDArray[np.int64
         (Oddity.BUSY, history.surprise >= FAR, "more"),
         (Oddity.QUIET, history.surprise <= -FAR, "fewer"),
     ):
-        for first, last in _runs(is_far):
+        for first, last in runs(is_far):
             observed = float(np.sum(counts[first:last]))
             expected = float(np.sum(history.median[first:last]))
             yield Finding(
@@ -102,12 +107,7 @@ def _far_off(name: str, hours: Flow, counts: FloatArray, group: NDArray[np.int64
 
 
 def _silent(name: str, hours: Flow, counts: FloatArray, group: NDArray[np.int64]) -> Iterator[Finding]:
-    lively = counts.copy()  # what is usual must not be learnt from long silences
-    for first, last in _runs(counts == 0):
-        if last - first >= _LONG_SILENCE_H:
-            lively[first:last] = np.nan
-    means, _ = group_means(lively, group, _HOURS_A_WEEK)
-    for run in silent_runs(counts, means[group]):
+    for run in silent_runs(counts, usual_but_for_silence(counts, group, _HOURS_A_WEEK)):
         yield Finding(
             kind=Oddity.SILENT,
             sensor=name,
@@ -130,7 +130,7 @@ def _one_way(name: str, days: Flow) -> Iterator[Finding]:
         some = count > 0
         share = float(count[some].sum() / both[some].sum())
         missing = (count == 0) & (chance_of_none(both, min(share, 1 - 1e-9)) < UNLIKELY)
-        for first, last in _runs(missing):
+        for first, last in runs(missing):
             passed = float(both[first:last].sum())
             yield Finding(
                 kind=Oddity.ONE_WAY,
@@ -175,9 +175,3 @@ def _fading(store: Store, sensor: str, edges_us: list[int]) -> Iterator[Finding]
 
 def _within(hours: Flow, one: Finding) -> NDArray[np.bool_]:
     return (hours.edges_us[:-1] >= one.start_us) & (hours.edges_us[:-1] < one.end_us)
-
-
-def _runs(flags: NDArray[np.bool_]) -> list[tuple[int, int]]:
-    """Unbroken runs [first, last) of True."""
-    steps = np.diff(np.concatenate([[0], flags.astype(np.int8), [0]]))
-    return list(zip(np.flatnonzero(steps == 1).tolist(), np.flatnonzero(steps == -1).tolist(), strict=True))

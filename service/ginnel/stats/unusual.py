@@ -5,8 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ginnel.stats.counts import IntArray
+from ginnel.stats.volumes import group_means
 from ginnel.words import FloatArray
 
 #: 1 / the upper quartile of the normal distribution: turns a median deviation into a standard deviation.
@@ -69,6 +71,15 @@ def against_history(counts: FloatArray, group: IntArray, n_groups: int, least: i
     return History(median=median, surprise=surprise)
 
 
+def usual_but_for_silence(counts: FloatArray, group: IntArray, n_groups: int, long: int = 24) -> FloatArray:
+    """Mean of the group of each interval, not learnt from silences of ``long`` intervals or more."""
+    lively = np.array(counts, float)
+    for first, last in runs(lively == 0):
+        if last - first >= long:
+            lively[first:last] = np.nan
+    return group_means(lively, group, n_groups)[0][group]
+
+
 def silent_runs(counts: FloatArray, usual: FloatArray, least_expected: float = 30.0) -> list[Run]:
     """Find runs of zeros where many would be expected: rather a dead sensor than an empty place.
 
@@ -83,15 +94,18 @@ def silent_runs(counts: FloatArray, usual: FloatArray, least_expected: float = 3
     30 expected and none seen has a probability of exp(-30), 1e-13, by chance. A place that was closed looks
     the same: such a run needs a person's judgement.
     """
-    is_zero = np.concatenate([[False], counts == 0, [False]])
-    starts = np.flatnonzero(is_zero[1:] & ~is_zero[:-1])
-    ends = np.flatnonzero(~is_zero[1:] & is_zero[:-1])
     before = np.concatenate([[0.0], np.cumsum(np.nan_to_num(usual))])
     return [
-        Run(first=int(start), n=int(end - start), expected=float(before[end] - before[start]))
-        for start, end in zip(starts, ends, strict=True)
+        Run(first=start, n=end - start, expected=float(before[end] - before[start]))
+        for start, end in runs(counts == 0)
         if before[end] - before[start] > least_expected
     ]
+
+
+def runs(flags: NDArray[np.bool_]) -> list[tuple[int, int]]:
+    """Unbroken runs [first, last) of True."""
+    steps = np.diff(np.concatenate([[0], flags.astype(np.int8), [0]]))
+    return list(zip(np.flatnonzero(steps == 1).tolist(), np.flatnonzero(steps == -1).tolist(), strict=True))
 
 
 def chance_of_none(n: IntArray, share: float) -> FloatArray:
