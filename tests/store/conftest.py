@@ -62,6 +62,13 @@ def postgres_url() -> Iterator[str]:
         shutil.rmtree(home)
 
 
+@pytest.fixture
+def postgres_programs(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Put programs that fit the server on the path: the system's may be older, or missing."""
+    if (binaries := _binaries()) is not None:
+        monkeypatch.setenv("PATH", f"{binaries}{os.pathsep}{os.environ['PATH']}")
+
+
 def _served(binaries: Path, home: Path) -> Iterator[str]:
     user = "nobody" if os.geteuid() == 0 else None
     if user is not None:

@@ -5,8 +5,17 @@ folder. It knows nothing of signals, files of samples or pages. Every write is o
 that a power cut leaves either the whole of a span or nothing of it.
 """
 
+from ginnel.store.backup import (
+    Backup,
+    back_up,
+    backups,
+    postgresql_restore_command,
+    prune_backups,
+    restore_sqlite,
+)
 from ginnel.store.columns import Coded, PassageColumns, iter_passage_columns
 from ginnel.store.engine import Store, open_store
+from ginnel.store.faults import find_faults
 from ginnel.store.health import (
     LoggedHealth,
     conditions,
@@ -41,10 +50,18 @@ from ginnel.store.query import (
     site,
     spans,
 )
+from ginnel.store.retention import (
+    newest_us,
+    prune_conditions,
+    prune_health,
+    prune_passages,
+    prune_rollups,
+)
 from ginnel.store.rollup import Rollup, merge
 from ginnel.store.schema import check, current, upgrade
 
 __all__ = [
+    "Backup",
     "Coded",
     "HourlyCounts",
     "HourlyListening",
@@ -59,11 +76,14 @@ __all__ = [
     "SpanChange",
     "Store",
     "are_whole_hours",
+    "back_up",
+    "backups",
     "check",
     "conditions",
     "current",
     "extend_span",
     "extent_us",
+    "find_faults",
     "hourly_counts",
     "hourly_listening",
     "hourly_speeds",
@@ -75,9 +95,16 @@ __all__ = [
     "latest_passages",
     "listened_until_us",
     "merge",
+    "newest_us",
     "open_conditions",
     "open_store",
     "passage_arrays",
+    "postgresql_restore_command",
+    "prune_backups",
+    "prune_conditions",
+    "prune_health",
+    "prune_passages",
+    "prune_rollups",
     "put_conditions",
     "put_health",
     "put_job",
@@ -85,6 +112,7 @@ __all__ = [
     "put_site",
     "record_span",
     "redate_span",
+    "restore_sqlite",
     "roll_up_hours",
     "sensors",
     "site",

@@ -14,10 +14,12 @@ from sqlalchemy.engine import URL, make_url
 from sqlalchemy.exc import ArgumentError, DBAPIError, NoSuchModuleError
 from sqlalchemy.pool import NullPool
 
-from ginnel.errors import StoreBusyError, StoreError
+from ginnel.errors import StoreBusyError, StoreDamagedError, StoreError, StoreFullError
 
 BUSY_TIMEOUT_S = 10.0
 _IMMEDIATE = "ginnel_immediate"
+#: SQLSTATE of PostgreSQL: no room; broken data, broken index.
+_DISK_FULL, _DAMAGED = "53100", ("XX001", "XX002")
 
 
 class Store:
@@ -148,8 +150,16 @@ def translated(url: URL) -> Iterator[None]:
                 f"{shown(url)} cannot be opened: SQLite keeps files of its own beside it, so make both the "
                 f"store and its folder writable for this user"
             ) from error
-        if "disk is full" in text:
-            raise StoreError(f"{shown(url)}: the disk is full: make room on it, then try again") from error
+        sqlstate = getattr(cause, "sqlstate", None)
+        if "disk is full" in text or sqlstate == _DISK_FULL:
+            raise StoreFullError(
+                f"{shown(url)}: the disk is full: make room on it, then try again"
+            ) from error
+        if "malformed" in text or sqlstate in _DAMAGED:
+            raise StoreDamagedError(
+                f"{shown(url)} is damaged ({text}): stop Ginnel, then take the last backup with "
+                "`ginnel store restore`"
+            ) from error
         if "not a database" in text:
             raise StoreError(f"{shown(url)} is not a Ginnel store (not a SQLite database)") from error
         if isinstance(error, DBAPIError) and url.get_backend_name() == "postgresql" and _lost(error):

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from sqlalchemy import Connection, Row, func, insert, select, update
+from sqlalchemy import Connection, Row, bindparam, func, insert, select, update
 from sqlalchemy.dialects import postgresql, sqlite
 
 from ginnel.store.codes import scaled, unscaled
@@ -78,6 +78,33 @@ def iter_health(
         with rows:
             for row in rows:
                 yield _sample(row)
+
+
+def health_near(
+    store: Store, sensor: str, moments_us: Sequence[int], within_us: int
+) -> list[HealthSample | None]:
+    """First sample of a sensor in [moment, moment + within) for each moment; None where there is none.
+
+    Each is one step into the key, so that a year takes no longer than a day.
+    """
+    query = (
+        select(*HealthRow.__table__.columns)
+        .where(
+            HealthRow.sensor_id == bindparam("sensor"),
+            HealthRow.at_us >= bindparam("first"),
+            HealthRow.at_us < bindparam("after"),
+        )
+        .order_by(HealthRow.at_us)
+        .limit(1)
+    )
+    found = []
+    with store.reading() as connection:
+        ((sensor_id, _),) = known_sensors(connection, sensor)
+        for moment_us in moments_us:
+            asked = {"sensor": sensor_id, "first": moment_us, "after": moment_us + within_us}
+            row = connection.execute(query, asked).one_or_none()
+            found.append(None if row is None else _sample(row))
+    return found
 
 
 def latest_health(store: Store) -> list[LoggedHealth]:
