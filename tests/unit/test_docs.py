@@ -13,7 +13,14 @@ from pydantic import BaseModel
 from ginnel.cli import main
 from ginnel.cli.group import COMMANDS
 from ginnel.config import Settings
-from ginnel.export.columns import COUNT_COLUMNS, PASSAGE_COLUMNS, SPEED_COLUMNS, Column
+from ginnel.export.columns import (
+    COUNT_COLUMNS,
+    HEALTH_COLUMNS,
+    OCCUPANCY_COLUMNS,
+    PASSAGE_COLUMNS,
+    SPEED_COLUMNS,
+    Column,
+)
 
 ROOT = Path(__file__).parents[2]
 REFERENCE = (ROOT / "docs/reference.md").read_text("utf-8")
@@ -85,7 +92,13 @@ def test_every_setting_is_in_the_reference_and_in_the_generated_file() -> None:
 
 @pytest.mark.parametrize(
     ("title", "columns"),
-    [("passages", PASSAGE_COLUMNS), ("counts", COUNT_COLUMNS), ("speeds", SPEED_COLUMNS)],
+    [
+        ("passages", PASSAGE_COLUMNS),
+        ("counts", COUNT_COLUMNS),
+        ("speeds", SPEED_COLUMNS),
+        ("occupancy", OCCUPANCY_COLUMNS),
+        ("health", HEALTH_COLUMNS),
+    ],
 )
 def test_every_column_is_in_its_table_and_no_other(title: str, columns: tuple[Column, ...]) -> None:
     table = REFERENCE.split(f"**{title}**", 1)[1].split("**", 1)[0]

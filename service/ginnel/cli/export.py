@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from ginnel.export import Question
     from ginnel.store import Store
 
-_TABLES = ["passages", "counts", "speeds"]
+_TABLES = ["passages", "counts", "speeds", "occupancy", "health"]
 _FORMATS = ["csv", "jsonl", "parquet", "xlsx"]
 _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
 
@@ -53,7 +53,7 @@ def export(
     partitioned: bool,
     output: Path | None,
 ) -> None:
-    """Write TABLE, one of passages, counts and speeds, as a file.
+    """Write TABLE, one of passages, counts, speeds, occupancy and health, as a file.
 
     Beside a file NAME.csv comes NAME.datapackage.json, which says what the columns are. An interval that
     nobody listened to has a blank count, not zero. A workbook (xlsx) may hold several tables.

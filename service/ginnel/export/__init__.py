@@ -5,7 +5,16 @@ Only shows what `reports` answers: no sums, no SQL. A file appears whole or not 
 
 from ginnel.export.columns import Column, Kind
 from ginnel.export.files import Format, iter_lines, write, write_partitioned
-from ginnel.export.tables import TABLES, Question, Table, counts_table, passages_table, speeds_table
+from ginnel.export.tables import (
+    TABLES,
+    Question,
+    Table,
+    counts_table,
+    health_table,
+    occupancy_table,
+    passages_table,
+    speeds_table,
+)
 
 __all__ = [
     "TABLES",
@@ -15,7 +24,9 @@ __all__ = [
     "Question",
     "Table",
     "counts_table",
+    "health_table",
     "iter_lines",
+    "occupancy_table",
     "passages_table",
     "speeds_table",
     "write",

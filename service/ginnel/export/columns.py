@@ -44,8 +44,8 @@ def _number(name: str, description: str, unit: str = "1", decimals: int = 4) -> 
     return Column(name=name, kind=Kind.NUMBER, description=description, unit=unit, decimals=decimals)
 
 
-def _whole(name: str, description: str) -> Column:
-    return Column(name=name, kind=Kind.WHOLE, description=description, unit="1")
+def _whole(name: str, description: str, unit: str = "1") -> Column:
+    return Column(name=name, kind=Kind.WHOLE, description=description, unit=unit)
 
 
 _SENSOR = _text("sensor", "name of the sensor", required=True)
@@ -59,7 +59,10 @@ _INTERVAL = (
     _SENSOR,
     _moment("interval_start", "start of the interval, by the site's clock", local=True),
     _moment("interval_end", "end of the interval, which is not part of it, by the site's clock", local=True),
-    _DIRECTION,
+)
+_LISTENED = (
+    _number("coverage", "share of the interval that was listened to", decimals=6),
+    _number("listened_s", "time listened in the interval", "s", 6),
 )
 _NOT_COUNTED = tuple(story for story in Story if story is not Story.PASSAGE)
 
@@ -93,16 +96,17 @@ PASSAGE_COLUMNS = (
 
 COUNT_COLUMNS = (
     *_INTERVAL,
+    _DIRECTION,
     _whole("count", "passages counted while listening; blank where the interval was never listened to"),
     _number("count_low", "lower exact 95 % Poisson limit of the count"),
     _number("count_high", "upper exact 95 % Poisson limit of the count"),
     _number("corrected", "count corrected by tallies; blank where there is no tally"),
-    _number("coverage", "share of the interval that was listened to", decimals=6),
-    _number("listened_s", "time listened in the interval", "s", 6),
+    *_LISTENED,
 )
 
 SPEED_COLUMNS = (
     *_INTERVAL,
+    _DIRECTION,
     _whole("n", "passages with a measured speed; blank where the interval was never listened to"),
     _number("mean_mps", "mean over passages (time-mean speed)", "m/s"),
     _number("space_mean_mps", "harmonic mean (space-mean speed)", "m/s"),
@@ -111,6 +115,36 @@ SPEED_COLUMNS = (
         _number(f"p{percent}_mps", f"{percent}th percentile ({PERCENTILE_METHOD})", "m/s")
         for percent in (15, 50, 85, 95)
     ),
+)
+
+OCCUPANCY_COLUMNS = (
+    *_INTERVAL,
+    _number(
+        "occupied_s",
+        "time in which at least one mover was heard, several at once once; blank where never listened to",
+        "s",
+        6,
+    ),
+    _number("occupancy", "share of the time listened in which at least one mover was heard", decimals=6),
+    *_LISTENED,
+)
+
+HEALTH_COLUMNS = (
+    _SENSOR,
+    _moment("measured_at", "end of the minute that was measured, UTC"),
+    _number("listened_s", "time listened in the minute", "s", 3),
+    _number("level_dbfs", "level of the input, full scale 0", "dB", 3),
+    _number("noise_dbfs_hz", "noise of the input in a band of 1 Hz, full scale 0", "dB", 3),
+    _number("hum_db", "hum of the mains above the noise", "dB", 3),
+    _number("lamp_db", "strongest line of lamps above the noise", "dB", 3),
+    _number("lamp_mps", "speed that the line of lamps looks like", "m/s", 3),
+    _number("clipped_share", "share of the samples that were clipped", decimals=6),
+    _whole("dropped_samples", "samples lost since the one before"),
+    _number("lag_s", "how far counting was behind", "s", 3),
+    _whole("disk_free_bytes", "room left on the disk", "B"),
+    _whole("disk_size_bytes", "size of the disk", "B"),
+    _whole("resident_bytes", "memory that the program held", "B"),
+    _number("temperature_c", "temperature of the computer", "°C", 3),
 )
 
 

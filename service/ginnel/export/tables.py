@@ -7,17 +7,26 @@ to has blanks, not zeros.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import islice, pairwise
 from typing import TypeVar
 from zoneinfo import ZoneInfo
 
 from ginnel import reports
 from ginnel.export.cells import Batch, Cells, Numbered, coded, moments, numbers
-from ginnel.export.columns import COUNT_COLUMNS, PASSAGE_COLUMNS, SPEED_COLUMNS, Column, band_column
-from ginnel.reports import BandedPassages, CountRow, Every, SensorFacts, SpeedRow
-from ginnel.store import Store
-from ginnel.words import Sensor, speed_band_labels
+from ginnel.export.columns import (
+    COUNT_COLUMNS,
+    HEALTH_COLUMNS,
+    OCCUPANCY_COLUMNS,
+    PASSAGE_COLUMNS,
+    SPEED_COLUMNS,
+    Column,
+    band_column,
+)
+from ginnel.reports import BandedPassages, CountRow, Every, OccupancyRow, SensorFacts, SpeedRow
+from ginnel.reports.health import iter_health
+from ginnel.store import Coded, LoggedHealth, Store
+from ginnel.words import FloatArray, Sensor, speed_band_labels
 
 _ROWS_AT_ONCE = 4000
 _Row = TypeVar("_Row")
@@ -82,11 +91,27 @@ def speeds_table(store: Store, asked: Question) -> Table:
     return _interval_table(store, asked, "speeds", columns, cells)
 
 
+def occupancy_table(store: Store, asked: Question) -> Table:
+    """Tabulate the share of time in which somebody was in the beam, by sensor and interval."""
+    rows = reports.iter_occupancy(store, asked.sensors, asked.start_us, asked.end_us, asked.every)
+    table = _interval_table(store, asked, "occupancy", OCCUPANCY_COLUMNS, _batches(rows, _occupancy_cells))
+    return replace(table, primary_key=("sensor", "interval_start"))
+
+
+def health_table(store: Store, asked: Question) -> Table:
+    """Tabulate how well the sensors heard, minute by minute, in order of sensor and time."""
+    rows = iter_health(store, asked.sensors, asked.start_us, asked.end_us)
+    table = _interval_table(store, asked, "health", HEALTH_COLUMNS, _batches(rows, _health_cells))
+    return replace(table, title="Health by the minute", primary_key=("sensor", "measured_at"))
+
+
 #: Every table that can be exported, by name.
 TABLES: dict[str, Callable[[Store, Question], Table]] = {
     "passages": passages_table,
     "counts": counts_table,
     "speeds": speeds_table,
+    "occupancy": occupancy_table,
+    "health": health_table,
 }
 
 
@@ -141,32 +166,44 @@ def _passage_cells(some: BandedPassages) -> Batch:
     )
 
 
-def _interval_cells(rows: Sequence[CountRow] | Sequence[SpeedRow]) -> tuple[Cells, ...]:
+def _interval_cells(rows: Sequence[CountRow | SpeedRow | OccupancyRow]) -> tuple[Cells, ...]:
     return (
         coded([row.sensor for row in rows]),
         moments([row.interval_start_us for row in rows]),
         moments([row.interval_end_us for row in rows]),
-        coded([row.direction.value if row.direction else "" for row in rows]),
     )
+
+
+def _directions(rows: Sequence[CountRow | SpeedRow]) -> Coded:
+    return coded([row.direction.value if row.direction else "" for row in rows])
+
+
+def _named(rows: Sequence[object], columns: Sequence[Column]) -> tuple[FloatArray, ...]:
+    """Numbers of rows, each by its column's name; all blank in a row that is None."""
+    return tuple(numbers([getattr(row, column.name, None) for row in rows]) for column in columns)
 
 
 def _count_cells(rows: list[CountRow]) -> Batch:
-    return (
-        *_interval_cells(rows),
-        numbers([row.count for row in rows]),
-        numbers([row.count_low for row in rows]),
-        numbers([row.count_high for row in rows]),
-        numbers([row.corrected for row in rows]),
-        numbers([row.coverage for row in rows]),
-        numbers([row.listened_s for row in rows]),
-    )
+    return (*_interval_cells(rows), _directions(rows), *_named(rows, COUNT_COLUMNS[4:]))
 
 
 def _speed_cells(rows: list[SpeedRow], labels: Sequence[str], own: dict[str, list[str]]) -> Batch:
-    measures = [column.name for column in SPEED_COLUMNS[4:]]
     held = [{} if row.bands is None else dict(zip(own[row.sensor], row.bands, strict=True)) for row in rows]
     return (
         *_interval_cells(rows),
-        *(numbers([getattr(row.summary, name, None) for row in rows]) for name in measures),
+        _directions(rows),
+        *_named([row.summary for row in rows], SPEED_COLUMNS[4:]),
         *(numbers([one.get(label) for one in held]) for label in labels),
+    )
+
+
+def _occupancy_cells(rows: list[OccupancyRow]) -> Batch:
+    return (*_interval_cells(rows), *_named(rows, OCCUPANCY_COLUMNS[3:]))
+
+
+def _health_cells(rows: list[LoggedHealth]) -> Batch:
+    return (
+        coded([row.sensor for row in rows]),
+        moments([row.sample.at_us for row in rows]),
+        *_named([row.sample for row in rows], HEALTH_COLUMNS[2:]),
     )

@@ -20,9 +20,9 @@ from ginnel.export.cells import Numbered, coded, moments, numbers
 from ginnel.export.columns import Column, Kind
 from ginnel.export.lines import csv_lines, json_lines, safe_text
 from ginnel.reports import Every
-from ginnel.store import Store, record_span
+from ginnel.store import LoggedHealth, Store, put_health, record_span
 from ginnel.times import to_us
-from ginnel.words import Direction, Flag, MoverKind, Passage, Sensor, Span, Story
+from ginnel.words import Direction, Flag, HealthSample, MoverKind, Passage, Sensor, Span, Story
 
 S = 1_000_000
 HOUR = 3600 * S
@@ -40,6 +40,11 @@ COUNTS = (
 SPEEDS = (
     "sensor,interval_start,interval_end,direction,"
     "n,mean_mps,space_mean_mps,sd_mps,p15_mps,p50_mps,p85_mps,p95_mps"
+)
+
+HEALTH = (
+    "sensor,measured_at,listened_s,level_dbfs,noise_dbfs_hz,hum_db,lamp_db,lamp_mps,clipped_share,dropped_samples,"
+    "lag_s,disk_free_bytes,disk_size_bytes,resident_bytes,temperature_c"
 )
 
 FULL = Passage(
@@ -75,6 +80,8 @@ def filled(store: Store) -> Store:
     turned = replace(BARE, crossed_us=NINE + 20 * S, ended_us=NINE + 20 * S, story=Story.TURN_BACK)
     record_span(store, NORTH, span(NINE, NINE + HOUR // 2), [FULL, BARE, turned], "1")
     record_span(store, NORTH, span(NINE + 2 * HOUR, NINE + 3 * HOUR), [], "1")
+    sample = HealthSample(at_us=NINE + 60 * S, listened_s=60.0, level_dbfs=-20.5, disk_free_bytes=3_000_000)
+    put_health(store, [LoggedHealth(sensor="north", sample=sample)])
     return store
 
 
@@ -128,6 +135,20 @@ def test_speeds_as_the_contract_has_them(filled: Store) -> None:
     assert lines[4].endswith("T11:00:00+00:00,approaching" + "," * 11)
 
 
+def test_occupancy_and_health_as_the_reference_has_them(filled: Store) -> None:
+    # FULL is heard from 1 s to 5 s, BARE and who turned back for no time at all: 4 s of half an hour
+    assert text_of("occupancy", filled).split("\r\n")[:3] == [
+        "sensor,interval_start,interval_end,occupied_s,occupancy,coverage,listened_s",
+        "north,2026-03-02T09:00:00+00:00,2026-03-02T10:00:00+00:00,14.000000,0.007778,0.500000,1800.000000",
+        "north,2026-03-02T10:00:00+00:00,2026-03-02T11:00:00+00:00,,,0.000000,0.000000",
+    ]
+    assert text_of("health", filled).split("\r\n") == [
+        HEALTH,
+        "north,2026-03-02T09:01:00.000000Z,60.000,-20.500,,,,,,0,,3000000,,,",
+        "",
+    ]
+
+
 def test_speed_bands_of_several_sensors_get_a_column_each(filled: Store) -> None:
     south = Sensor(name="south", speed_bands_mps=(1.0, 1.5, 2.0))
     moment = replace(FULL, speed_mps=1.75)
@@ -150,7 +171,7 @@ def test_every_line_has_as_many_cells_as_the_header_and_ends_in_crlf(filled: Sto
 
 def test_times_are_rfc_3339(filled: Store) -> None:
     form = re.compile(r"\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d(\.\d+)?(Z|[+-]\d\d:\d\d)")  # section 5.6
-    for name, columns in (("passages", (2, 3, 4)), ("counts", (1, 2)), ("speeds", (1, 2))):
+    for name, columns in (("passages", (2, 3, 4)), ("counts", (1, 2)), ("speeds", (1, 2)), ("health", (1,))):
         rows = list(csv.reader(io.StringIO(text_of(name, filled))))[1:]
         assert rows
         assert all(form.fullmatch(row[column]) for row in rows for column in columns)
@@ -177,6 +198,7 @@ def test_an_empty_log_is_a_header(store: Store) -> None:
     assert text_of("passages", store) == PASSAGES + "\r\n"
     assert text_of("counts", store) == COUNTS + "\r\n"
     assert text_of("speeds", store) == SPEEDS + "\r\n"
+    assert text_of("health", store) == HEALTH + "\r\n"
 
 
 def test_period_and_sensor_can_be_chosen(filled: Store) -> None:

@@ -16,8 +16,8 @@ import pytest
 from ginnel.errors import ExportError
 from ginnel.export import TABLES, Format, Question, Table, passages_table, write
 from ginnel.export.cells import Batch
-from ginnel.store import Store, record_span
-from ginnel.words import Direction, Flag, Mounting, MoverKind, Passage, Sensor, Span, Story
+from ginnel.store import LoggedHealth, Store, put_health, record_span
+from ginnel.words import Direction, Flag, HealthSample, Mounting, MoverKind, Passage, Sensor, Span, Story
 
 S = 1_000_000
 NINE = 1_772_442_000 * S
@@ -33,8 +33,9 @@ def export(store: Store, name: str, path: Path, kind: Format = Format.CSV) -> in
     return write(store, [TABLES[name](store, Question())], path, kind)
 
 
-@pytest.fixture
-def filled(store: Store) -> Store:
+@pytest.fixture(scope="module")
+def filled(shared_store: Store) -> Store:
+    store = shared_store
     plain = Passage(
         started_us=NINE + S,
         crossed_us=NINE + 2 * S + 1,
@@ -56,6 +57,7 @@ def filled(store: Store) -> Store:
             started_us=NINE + start_s * S, ended_us=NINE + (start_s + 3000) * S, sample_rate_hz=8000.0
         )
         record_span(store, NORTH, span, passages, "0.1")
+    put_health(store, [LoggedHealth(sensor="north", sample=HealthSample(at_us=NINE + 60 * S))])
     return store
 
 
