@@ -12,11 +12,14 @@ import click
 from ginnel.cli.options import Moment, config_option, moment_us
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from ginnel.config import StationSettings
     from ginnel.export import Question
     from ginnel.store import Store
 
 _TABLES = ["passages", "counts", "speeds", "occupancy", "health"]
-_FORMATS = ["csv", "jsonl", "parquet", "xlsx"]
+_FORMATS = ["csv", "jsonl", "parquet", "xlsx", "tmg"]
 _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
 
 
@@ -62,13 +65,14 @@ def export(
     For example, the counts of March, day by day:
       ginnel export counts --every day --from 2026-03-01 --to 2026-04-01 --output march.csv
     """  # noqa: D301 (the backspace is click's mark for lines that stay as they are)
-    _check_usage(tables, kind, uncounted=uncounted, partitioned=partitioned, output=output)
+    _check_usage(tables, kind, every, uncounted=uncounted, partitioned=partitioned, output=output)
     from ginnel import export as files
     from ginnel.config import load_settings
     from ginnel.reports import Every, site
     from ginnel.store import open_store
 
-    with open_store(load_settings(config_file).store.url, read_only=True) as store:
+    settings = load_settings(config_file)
+    with open_store(settings.store.url, read_only=True) as store:
         zone = site(store).timezone
         asked = files.Question(
             sensors=sensors or None,
@@ -79,13 +83,17 @@ def export(
         )
         if asked.start_us is not None and asked.end_us is not None and asked.start_us >= asked.end_us:
             raise click.UsageError("--to must be later than --from")
-        n_rows = _write(store, tables, asked, kind, partitioned=partitioned, output=output)
+        if kind == "tmg":
+            stations = {one.name: one.station for one in settings.sensor if one.station is not None}
+            n_rows = _write_records(store, tables[0], asked, stations, output)
+        else:
+            n_rows = _write(store, tables, asked, kind, partitioned=partitioned, output=output)
     if output is not None:
         click.echo(f"{output}: {n_rows} rows", err=True)
 
 
 def _check_usage(
-    tables: tuple[str, ...], kind: str, *, uncounted: bool, partitioned: bool, output: Path | None
+    tables: tuple[str, ...], kind: str, every: str, *, uncounted: bool, partitioned: bool, output: Path | None
 ) -> None:
     if uncounted and "passages" not in tables:
         raise click.UsageError("--uncounted goes with passages only")
@@ -95,6 +103,8 @@ def _check_usage(
         raise click.UsageError("several tables go together with --format xlsx only")
     if kind in ("parquet", "xlsx") and output is None:
         raise click.UsageError(f"{kind} needs --output FILE")
+    if kind == "tmg" and (tables[0] not in ("counts", "speeds") or every != "hour"):
+        raise click.UsageError("tmg has counts or speeds by the hour")
     if partitioned and (tables != ("passages",) or kind != "parquet"):
         raise click.UsageError("--partitioned goes with passages and --format parquet only")
 
@@ -114,3 +124,19 @@ def _write(
     if partitioned and output is not None:
         return files.write_partitioned(store, made[0], output)
     return files.write(store, made, sys.stdout.buffer if output is None else output, files.Format(kind))
+
+
+def _write_records(
+    store: Store,
+    table: str,
+    asked: Question,
+    stations: Mapping[str, StationSettings],
+    output: Path | None,
+) -> int:
+    from ginnel.export.tmg import speed_records, volume_records, write_records
+
+    records = (volume_records if table == "counts" else speed_records)(store, asked, stations)
+    write_records(records, sys.stdout.buffer if output is None else output)
+    if records.n_without_direction:
+        click.echo(f"{records.n_without_direction} passages of unknown direction are in no record", err=True)
+    return len(records.lines)

@@ -11,6 +11,7 @@ from ginnel.config.sections import ListenSettings, SiteSettings, StoreSettings, 
 from ginnel.config.sensor import DirectionSettings, MountingChange, MountingSettings, SensorSettings
 from ginnel.config.source import SourceKind, SourceSettings
 from ginnel.config.space import DoorSettings, SpaceSettings
+from ginnel.config.station import StationSettings
 from ginnel.config.tree import Settings
 from ginnel.config.upkeep import BackupSettings, NotifySettings, RetentionSettings
 
@@ -30,6 +31,7 @@ __all__ = [
     "SourceKind",
     "SourceSettings",
     "SpaceSettings",
+    "StationSettings",
     "StoreSettings",
     "WebSettings",
     "default_config_text",

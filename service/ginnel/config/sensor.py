@@ -11,6 +11,7 @@ from pydantic import AwareDatetime, Field, field_validator, model_validator
 
 from ginnel.config.section import Listed, Section
 from ginnel.config.source import SourceSettings
+from ginnel.config.station import StationSettings
 from ginnel.times import to_us
 from ginnel.words import Aspect, Channels, Mounting, Sensor
 
@@ -73,6 +74,7 @@ class SensorSettings(Section):
     mounting_change: Annotated[tuple[MountingChange, ...], Listed] = ()
     directions: DirectionSettings = DirectionSettings()
     source: SourceSettings = SourceSettings()
+    station: StationSettings | None = None
 
     @field_validator("speed_bands_mps")
     @classmethod
