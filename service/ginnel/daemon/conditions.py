@@ -150,8 +150,8 @@ RULES = {
 class ConditionWatch:
     """Keeps count of bad and good minutes, and of what is raised."""
 
-    def __init__(self, raised: Iterable[Condition] = ()) -> None:
-        self._raised = {(one.kind, one.sensor): one for one in raised}
+    def __init__(self) -> None:
+        self._raised: dict[tuple[str, str | None], Condition] = {}
         self._in_a_row: dict[tuple[str, str | None], tuple[bool, int]] = {}
 
     @property
@@ -182,6 +182,10 @@ class ConditionWatch:
             elif not finding.is_bad and key in self._raised and n >= rule.clear_min:
                 changes.append(self._cleared(key, at_us))
         return changes
+
+    def adopt(self, raised: Iterable[Condition]) -> None:
+        """Take over what was raised before this program started."""
+        self._raised |= {(one.kind, one.sensor): one for one in raised}
 
     def forget(self, at_us: int, sensors: Iterable[str]) -> list[Condition]:
         """Clear what concerns sensors other than these: they are not listened to any more."""

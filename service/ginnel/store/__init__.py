@@ -59,6 +59,7 @@ from ginnel.store.retention import (
 )
 from ginnel.store.rollup import Rollup, merge
 from ginnel.store.schema import check, current, upgrade
+from ginnel.store.vacuum import vacuum
 
 __all__ = [
     "Backup",
@@ -118,4 +119,5 @@ __all__ = [
     "site",
     "spans",
     "upgrade",
+    "vacuum",
 ]
