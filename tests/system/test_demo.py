@@ -36,7 +36,7 @@ def test_the_demo_counts_what_passed_and_serves_it(tmp_path: Path) -> None:
             text = "".join(lines)
             address = re.search(r"http://127\.0\.0\.1:\d+/", text)
             assert address is not None, text + demo.stderr.read()
-            with urlopen(f"{address[0]}?sensor=north-corridor") as answer:
+            with urlopen(f"{address[0]}busy?sensor=north-corridor") as answer:
                 page = answer.read().decode()
         finally:
             demo.send_signal(signal.SIGINT)

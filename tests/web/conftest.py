@@ -1,23 +1,30 @@
-"""A store with known days in it, and the dashboard over it.
+"""A store with known days in it, and the dashboard over it: asked without a network, or in a real browser.
 
 All counts that tests expect are counted by hand in the lists below.
 """
 
 from __future__ import annotations
 
+import contextlib
+import os
+import shutil
+import threading
 from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
-from pathlib import Path
+from html.parser import HTMLParser
 
 import pytest
 from flask.testing import FlaskClient
+from playwright.sync_api import Browser, sync_playwright
 
 from ginnel.config import Settings, load_settings
 from ginnel.store import open_store, put_site, record_span
 from ginnel.times import to_us
 from ginnel.web.app import create_app
+from ginnel.web.server import Server, bind
 from ginnel.words import Direction, Flag, Passage, Sensor, Site, Span, Story
 
+CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
 CORRIDOR = Sensor(name="corridor", approaching_name="to the looms", receding_name="to the gate")
 GATE = Sensor(name="gate")
 
@@ -55,11 +62,11 @@ def passage(clock: str, direction: Direction, speed_mps: float | None, day: str 
     )
 
 
-@pytest.fixture
-def settings(tmp_path: Path) -> Settings:
-    """Settings of the looms' site, with the day above in its store."""
-    file = tmp_path / "ginnel.toml"
-    file.write_text('[[sensor]]\nname = "corridor"\n', "utf-8")
+@pytest.fixture(scope="session")
+def settings(tmp_path_factory: pytest.TempPathFactory) -> Settings:
+    """Settings of the looms' site, with the day above in its store, which the dashboard only reads."""
+    file = tmp_path_factory.mktemp("looms") / "ginnel.toml"
+    file.write_text('[web]\nlocale = "en-IE"\n[[sensor]]\nname = "corridor"\n', "utf-8")
     settings = load_settings(file)
     with open_store(settings.store.url, create=True) as store:
         put_site(store, Site(name="Loom house <5>", timezone="Europe/Dublin"))
@@ -99,3 +106,76 @@ def client(settings: Settings) -> Iterator[FlaskClient]:
     with app.test_client() as client:
         yield client
     app.extensions["ginnel.store"].close()
+
+
+class _Tables(HTMLParser):
+    """All tables of a page, as lists of rows of text."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.tables: list[list[list[str]]] = []
+        self._in_cell = False
+
+    def handle_starttag(self, tag: str, attrs: list[tuple[str, str | None]]) -> None:
+        if tag == "table":
+            self.tables.append([])
+        elif tag == "tr":
+            self.tables[-1].append([])
+        elif tag in ("td", "th"):
+            self.tables[-1][-1].append("")
+            self._in_cell = True
+
+    def handle_endtag(self, tag: str) -> None:
+        if tag in ("td", "th"):
+            self._in_cell = False
+
+    def handle_data(self, data: str) -> None:
+        if self._in_cell:
+            self.tables[-1][-1][-1] += data
+
+
+def tables_of(client: FlaskClient, url: str) -> list[list[list[str]]]:
+    """Every table of a page, read with the standard library's parser."""
+    answer = client.get(url)
+    assert answer.status_code == 200
+    parser = _Tables()
+    parser.feed(answer.text)
+    return [[[" ".join(cell.split()) for cell in row] for row in table] for table in parser.tables]
+
+
+@contextlib.contextmanager
+def serving(settings: Settings) -> Iterator[Server]:
+    """The real server on a free port, in a thread of its own."""
+    with bind(settings, 0) as server:
+
+        def answer() -> None:
+            with contextlib.suppress(OSError):  # whoever asked for it closes the socket that is waited for
+                server.run()
+
+        thread = threading.Thread(target=answer, daemon=True)
+        thread.start()
+        yield server
+    thread.join(timeout=10)
+
+
+@pytest.fixture
+def server(settings: Settings) -> Iterator[Server]:
+    """The real server over the store above."""
+    with serving(settings) as server:
+        yield server
+
+
+@pytest.fixture(scope="session")
+def browser() -> Iterator[Browser]:
+    """Debian's Chromium; where there is none, a reason to skip, but never in CI."""
+    if CHROMIUM is None:
+        if os.environ.get("CI"):
+            pytest.fail("chromium is missing, and CI must not skip the browser", pytrace=False)
+        pytest.skip("no chromium here: apt install chromium to test in a browser")
+    with sync_playwright() as playwright:
+        browser = playwright.chromium.launch(
+            executable_path=CHROMIUM,
+            args=["--no-sandbox", "--disable-gpu", "--disable-background-networking"],
+        )
+        yield browser
+        browser.close()

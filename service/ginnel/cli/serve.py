@@ -1,4 +1,4 @@
-"""`ginnel serve`: the dashboard, on this machine only."""
+"""`ginnel serve`: the dashboard."""
 
 from __future__ import annotations
 
@@ -12,18 +12,20 @@ from ginnel.cli.options import config_option, quiet_option
 @click.command()
 @config_option
 @click.option(
-    "--port", type=click.IntRange(0, 65535), default=8470, show_default=True, help="0 takes any free one."
+    "--port", type=click.IntRange(0, 65535), help="Another than in the settings; 0 takes any free one."
 )
 @quiet_option
-def serve(config_file: Path | None, port: int, quiet: bool) -> None:
-    """Show the dashboard on this machine until Ctrl-C.
+def serve(config_file: Path | None, port: int | None, quiet: bool) -> None:
+    """Show the dashboard until Ctrl-C.
 
-    It listens on 127.0.0.1 only, so that nobody else on the network sees it.
+    It listens on this machine only, unless the settings name another address and somebody has a
+    password (`ginnel users add NAME`).
     """
     from ginnel.config import load_settings
     from ginnel.web.server import bind
 
-    with bind(load_settings(config_file), port) as server:
+    settings = load_settings(config_file)
+    with bind(settings, port) as server:
         if not quiet:
-            click.echo(f"The dashboard is at {server.address} (Ctrl-C ends it)")
+            click.echo(f"The dashboard is at {settings.web.public_url or server.address} (Ctrl-C ends it)")
         server.run()

@@ -48,3 +48,14 @@ def heard(store: Store, sensor: str, start_us: int, end_us: int) -> tuple[Stretc
             stop_us = max(stop_us, joined.pop().ended_us)
         joined.append(Stretch(started_us=begin_us, ended_us=stop_us))
     return tuple(joined)
+
+
+def unheard(store: Store, sensor: str, start_us: int, end_us: int) -> tuple[Stretch, ...]:
+    """Stretches of [start_us, end_us) in which a sensor did not listen, in order."""
+    edges = [start_us]
+    for stretch in heard(store, sensor, start_us, end_us):
+        edges += [stretch.started_us, stretch.ended_us]
+    edges.append(end_us)
+    return tuple(
+        Stretch(started_us=a, ended_us=b) for a, b in zip(edges[::2], edges[1::2], strict=True) if b > a
+    )

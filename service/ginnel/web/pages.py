@@ -1,116 +1,166 @@
-"""Addresses of the dashboard: each reads its query, asks, and shows."""
+"""The pages: each reads its address, asks, and shows."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from datetime import date, timedelta
-from urllib.parse import urlencode
-from zoneinfo import ZoneInfo
+from dataclasses import replace
 
-import flask
-from flask import Blueprint, current_app, render_template, request
-from werkzeug.exceptions import SecurityError
+from flask import Blueprint, request
 
-from ginnel.reports import overview as about
-from ginnel.store import Store
-from ginnel.times import from_us
-from ginnel.web.day import Day, last_day, look_at, name_of
-from ginnel.words import Sensor
+from ginnel.web import files, questions
+from ginnel.web.answers import busy as busy_answer
+from ginnel.web.answers import fast as fast_answer
+from ginnel.web.answers import full as full_answer
+from ginnel.web.answers import now as now_answer
+from ginnel.web.answers import single as single_answer
+from ginnel.web.answers import trust as trust_answer
+from ginnel.web.asked import ask, show
+from ginnel.web.wording import PER_MPS, interval_name
+from ginnel.words import Passage, Story
 
 pages = Blueprint("pages", __name__)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Choice:
-    """What a query asks to see; the day is None where the log knows none."""
-
-    about: about.Overview
-    sensor: Sensor
-    day: date | None
-
-
-def open_store_of_app() -> Store:
-    """Give the store that this application shows."""
-    store: Store = current_app.extensions["ginnel.store"]
-    return store
-
-
 @pages.get("/")
-def day_page() -> str | tuple[str, int]:
-    """Show one day of one sensor."""
-    found = about.overview(open_store_of_app())
-    if not found.sensors:
-        return render_template("empty.html", site=found.site)
-    choice = _choice(found)
-    if choice.day is None:
-        return render_template("empty.html", site=found.site, sensor=choice.sensor)
-    day = look_at(open_store_of_app(), found.site, choice.sensor, choice.day)
-    return render_template(
-        "day.html",
-        day=day,
-        site=found.site,
-        sensors=found.sensors,
-        charts_url=flask.url_for("pages.charts_json") + "?" + _query(day.sensor, day.day),
-        before_url="?" + _query(day.sensor, day.day - timedelta(days=1)),
-        after_url="?" + _query(day.sensor, day.day + timedelta(days=1)),
-        name_of=name_of,
-        local=lambda moment_us: from_us(moment_us, day.zone),
-        speed_rows=_speed_rows(day),
+def now() -> str:
+    """Answer whether everything is all right."""
+    asked = ask()
+    found = now_answer.look(asked.store, asked.sensors, asked.now_us)
+    return show("now.html", questions.NOW, asked, now=found)
+
+
+@pages.get("/now-part")
+def now_part() -> str:
+    """Give the live part of the first page alone."""
+    asked = ask()
+    found = now_answer.look(asked.store, asked.sensors, asked.now_us)
+    return show("now_part.html", questions.NOW, asked, now=found)
+
+
+@pages.get("/busy")
+def busy() -> str:
+    """Answer how busy it was."""
+    asked = ask()
+    view = asked.view()
+    found = busy_answer.look(asked.store, view, asked.now_us)
+    return show(
+        "busy.html", questions.BUSY, asked, view, charts=True, busy=found, interval_name=interval_name
     )
 
 
-@pages.get("/charts.json")
-def charts_json() -> flask.Response:
-    """Give the charts of one day of one sensor."""
-    from ginnel.web.charts import SCHEMES, day_charts
-
-    scheme = SCHEMES.get(request.args.get("scheme", "light"))
-    found = about.overview(open_store_of_app())
-    if scheme is None or not found.sensors:
-        flask.abort(404)
-    choice = _choice(found)
-    if choice.day is None:
-        return flask.jsonify({})
-    return flask.jsonify(
-        day_charts(look_at(open_store_of_app(), found.site, choice.sensor, choice.day), scheme)
+@pages.get("/fast")
+def fast() -> str:
+    """Answer how fast they went."""
+    asked = ask()
+    view = asked.view()
+    found = fast_answer.look(asked.store, view, limit_mps(asked.settings.speed_limit, asked.settings.units))
+    wording, few = asked.wording, fast_answer.FEW
+    return show(
+        "fast.html",
+        questions.FAST,
+        asked,
+        view,
+        charts=bool(found.all.summary.n),
+        fast=found,
+        few=few,
+        trend_rows=[
+            (interval_name(view, found.every, one.start_us, wording), one.summary) for one in found.along
+        ],
+        clock_rows=[(f"{hour:02}:00", one) for hour, one in enumerate(found.by_hour)],
+        has_trend=any(one.summary.n >= few for one in found.along),
+        has_clock=any(one.n >= few for one in found.by_hour),
     )
 
 
-@pages.app_errorhandler(400)
-@pages.app_errorhandler(404)
-def not_so(error: Exception) -> tuple[str, int]:
-    """Say in a line what was wrong with the address."""
-    if isinstance(error, SecurityError):  # an untrusted host has no addresses to make a page with
-        return "Open the dashboard by the address that ginnel serve printed.", 400
-    code = getattr(error, "code", 404)
-    text = getattr(error, "description", None) or "There is nothing at this address."
-    return render_template(
-        "trouble.html", title="Not found" if code == 404 else "Not understood", text=text
-    ), code
+@pages.get("/full")
+def full() -> str:
+    """Answer how full it was."""
+    asked = ask()
+    view = asked.view()
+    found = full_answer.look(asked.store, view, asked.spaces, asked.now_us)
+    return show(
+        "full.html",
+        questions.FULL,
+        asked,
+        view,
+        charts=bool(found.rows),
+        full=found,
+        most_days=full_answer.MOST_DAYS,
+        has_spaces=bool(asked.spaces),
+        interval_name=interval_name,
+    )
 
 
-def _choice(found: about.Overview) -> Choice:
-    name = request.args.get("sensor", found.sensors[0].name)
-    sensor = next((sensor for sensor in found.sensors if sensor.name == name), None)
-    if sensor is None:
-        flask.abort(404, f"No sensor here is called {name}.")
-    zone = ZoneInfo(found.site.timezone)
-    asked = request.args.get("day")
-    try:
-        day = date.fromisoformat(asked) if asked else last_day(open_store_of_app(), sensor.name, zone)
-    except ValueError:
-        flask.abort(400, f"{asked} is not a day such as 2026-03-02.")
-    if day is not None and not 1970 < day.year < 9999:
-        flask.abort(400, f"{asked} is outside the years that a log can hold.")
-    return Choice(about=found, sensor=sensor, day=day)
+@pages.get("/one-by-one")
+def single() -> str:
+    """Answer what exactly passed."""
+    asked = ask()
+    with_uncounted = request.args.get("with") == "uncounted"
+    hour = request.args.get("hour")
+    view = asked.view()
+    found = single_answer.look(asked.store, view, hour, with_uncounted=with_uncounted)
+    kept = {"with": "uncounted"} if with_uncounted else {}
+    names = single_answer.hour_names([one.start_us for one in found.hours], found.view)
+    return show(
+        "single.html",
+        questions.SINGLE,
+        asked,
+        found.view,
+        single=found,
+        names=names,
+        shown_hour=next(name for name, one in zip(names, found.hours, strict=True) if one.is_shown),
+        remarks=remarks,
+        kept=kept,
+    )
 
 
-def _query(sensor: Sensor, day: date) -> str:
-    return urlencode({"sensor": sensor.name, "day": day.isoformat()})
+@pages.get("/sure")
+def trust() -> str:
+    """Answer how far this can be trusted."""
+    asked = ask()
+    view = asked.view()
+    found = trust_answer.look(asked.store, view, asked.now_us)
+    return show("trust.html", questions.TRUST, asked, view, charts=True, trust=found)
 
 
-def _speed_rows(day: Day) -> list[tuple[str, object]]:
-    rows: list[tuple[str, object]] = [
-        (name_of(direction, day.sensor), day.speeds.summaries[direction]) for direction in day.directions
-    ]
-    return [*rows, ("all", day.speeds.summaries[None])]
+@pages.get("/take-away")
+def take() -> str:
+    """Offer files to take away."""
+    asked = ask()
+    return show(
+        "take.html", questions.TAKE, asked, asked.view(), kinds=files.kinds(), formats=files.formats()
+    )
+
+
+@pages.get("/side-by-side")
+def side() -> str:
+    """Compare two sensors."""
+    asked = ask()
+    view = asked.view()
+    names = [sensor.name for sensor in asked.sensors if sensor.name != view.sensor.name]
+    other = asked.sensor(request.args.get("with", names[0] if names else view.sensor.name))
+    pair = tuple(
+        busy_answer.look(asked.store, replace(view, sensor=sensor), asked.now_us)
+        for sensor in (view.sensor, other)
+    )
+    return show(
+        "side.html",
+        questions.SIDE,
+        asked,
+        view,
+        charts=True,
+        pair=pair,
+        other=other,
+        kept={"with": other.name},
+        interval_name=interval_name,
+    )
+
+
+def limit_mps(limit: float | None, units: str) -> float | None:
+    """Turn the limit of the settings into m/s."""
+    return None if limit is None else limit / PER_MPS[units]
+
+
+def remarks(passage: Passage) -> str:
+    """What to know of a passage before trusting it."""
+    words = [] if passage.story is Story.PASSAGE else [f"{passage.story.value}, not counted"]
+    return ", ".join(words + sorted(flag.value for flag in passage.flags))
