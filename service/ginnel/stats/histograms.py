@@ -31,17 +31,16 @@ def grouped_quantiles(
     class. Source: Iowa Handbook of Simplified Practice for Traffic Studies (CTRE, 2002), spot speed. No
     further from the true quantile than the class is wide, given enough values.
     """
-    cumulative = np.concatenate([[0], np.cumsum(counts)])
-    total = cumulative[-1]
-    if total == 0:
+    held = np.flatnonzero(counts)  # classes that hold any; no quantile lies in an empty one
+    if not len(held):
         return None
-    # an empty class makes a flat piece; the quantile lies at its lower end
-    rising = np.concatenate([[True], np.diff(cumulative) > 0])
-    first = int(np.argmax(cumulative > 0)) - 1
-    rising[:first] = False
-    rising[first] = True
-    wanted = np.asarray(probabilities) * total
-    return [float(v) for v in np.interp(wanted, cumulative[rising], np.asarray(edges, float)[rising])]
+    upper = np.cumsum(np.asarray(counts)[held])
+    wanted = np.asarray(probabilities, float) * upper[-1]
+    at = np.minimum(np.searchsorted(upper, wanted, side="left"), len(held) - 1)
+    one = held[at]
+    part = 1 - (upper[at] - wanted) / np.asarray(counts)[one]
+    low, high = np.asarray(edges, float)[one], np.asarray(edges, float)[one + 1]
+    return [float(value) for value in low + part * (high - low)]
 
 
 def grouped_mean_sd(counts: IntArray, edges: FloatArray) -> tuple[float | None, float | None]:
