@@ -26,7 +26,6 @@ Characters = NDArray[np.uint8]  # shape (n, width)
 IntArray = NDArray[np.int64]
 
 _DAY_S = 86_400
-_ZERO = ord("0")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -100,7 +99,8 @@ def _lines(columns: Sequence[Column], batch: Batch, zone: tzinfo, style: Style) 
     for piece, width in zip(pieces, widths, strict=True):
         page[:, at : at + width] = np.frombuffer(piece, np.uint8) if isinstance(piece, bytes) else piece
         at += width
-    return bytes(page[page != 0])
+    characters = page.ravel()
+    return np.compress(characters != 0, characters).tobytes()  # twice as quick as a mask as index
 
 
 def _cell_pieces(column: Column, cells: Cells, zone: tzinfo, style: Style) -> list[Characters | bytes]:
@@ -201,4 +201,9 @@ def _triples() -> Characters:
 @cache
 def _clock_texts() -> Characters:
     """T00:00:00 to T23:59:59."""
-    return _table([f"T{s // 3600:02d}:{s // 60 % 60:02d}:{s % 60:02d}" for s in range(_DAY_S)])
+    second = np.arange(_DAY_S)
+    text = np.full((_DAY_S, 9), ord(":"), np.uint8)
+    text[:, 0] = ord("T")
+    for place, value in ((1, second // 3600), (4, second // 60 % 60), (7, second % 60)):
+        text[:, place : place + 2] = _triples()[value, 1:]
+    return text
