@@ -10,6 +10,7 @@ import flask
 from flask import Blueprint, Flask, current_app, request
 from flask_login import current_user, login_user, logout_user
 from flask_wtf.csrf import CSRFError, CSRFProtect
+from werkzeug.exceptions import SecurityError
 from werkzeug.wrappers import Response
 
 from ginnel.store import Store
@@ -50,6 +51,8 @@ def register(app: Flask, store: Store, *, local_only: bool, behind_tls: bool) ->
 
 def ask_who() -> Response | None:
     """Let in whoever may; send strangers to the login, and programs away."""
+    if isinstance(request.routing_exception, SecurityError):  # an untrusted host gets no address of ours
+        raise request.routing_exception
     if person() is not None or request.endpoint in OPEN_ENDPOINTS or is_open():
         return None
     if not known.has_users(_store()):  # listening to the network, and the last user is gone
