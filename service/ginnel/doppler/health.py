@@ -26,6 +26,7 @@ _MAINS_TOLERANCE = 0.01
 _LINE_BINS = 2
 _BESIDE_HZ = 15.0
 _HANN_NOISE_BINS = 1.5
+_MEDIAN_OF_NOISE = {1: math.log(2), 2: 0.83917}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -68,29 +69,35 @@ def power_density(samples: SampleArray, sample_rate_hz: float, n_bins: int) -> F
     return np.asarray(one_sided * (4 * per_hz))  # two signs, and a full-scale sine's 1/2 counts as 1
 
 
-def noise_density(density: FloatArray, bin_hz: float, from_hz: float) -> float:
+def noise_density(density: FloatArray, bin_hz: float, from_hz: float, n_signs: int = 1) -> float:
     """Level of the noise between the lines and movers, from a frequency on.
 
     Parameters
     ----------
     density : array, shape (n_bins,): the median over some spectra, from `power_density`
+    n_signs : signs of frequency added up in it: 1, or 2 for an I/Q pair
 
     Notes
     -----
-    The median over bins, over ln 2: that of exponential noise is ln 2 of its mean, and so is that of
-    the median of an odd number of spectra (nearly, of an even one).
+    The median over bins, over that of noise of mean 1: ln 2 for an exponential variable, 0.8392 for the
+    mean of two (a gamma variable of shape 2). The median of an odd number of spectra has the same median
+    as one of them; that of an even number, nearly.
     """
-    return float(np.median(density[min(math.ceil(from_hz / bin_hz), len(density) - 1) :]) / math.log(2))
+    noise = density[min(math.ceil(from_hz / bin_hz), len(density) - 1) :]
+    return float(np.median(noise) / _MEDIAN_OF_NOISE[n_signs])
 
 
 def strongest_line(
-    density: FloatArray, bin_hz: float, mains_hz: float, multiples: Sequence[int]
+    density: FloatArray, bin_hz: float, mains_hz: float, multiples: Sequence[int], n_signs: int = 1
 ) -> Line | None:
-    """Find the line at one of these multiples of the mains that stands highest; None out of the band."""
+    """Find the line at one of these multiples of the mains that stands highest; None out of the band.
+
+    ``density`` and ``n_signs`` are as for `noise_density`.
+    """
     lines = [
         line
         for multiple in multiples
-        if (line := _line_near(density, bin_hz, multiple * mains_hz)) is not None
+        if (line := _line_near(density, bin_hz, multiple * mains_hz, n_signs)) is not None
     ]
     return max(lines, key=lambda line: line.over_noise_db, default=None)
 
@@ -100,7 +107,7 @@ def decibels(power_ratio: float) -> float:
     return 10 * math.log10(max(power_ratio, 1e-20))
 
 
-def _line_near(density: FloatArray, bin_hz: float, frequency_hz: float) -> Line | None:
+def _line_near(density: FloatArray, bin_hz: float, frequency_hz: float, n_signs: int) -> Line | None:
     centre = frequency_hz / bin_hz
     half = _MAINS_TOLERANCE * centre + 1
     first, last = math.ceil(centre - half), math.floor(centre + half) + 1
@@ -110,5 +117,5 @@ def _line_near(density: FloatArray, bin_hz: float, frequency_hz: float) -> Line 
     peak = first + int(np.argmax(density[first:last]))
     left = density[first - _LINE_BINS - beside : first - _LINE_BINS]
     right = density[last + _LINE_BINS : last + _LINE_BINS + beside]
-    noise = float(np.median(np.concatenate([left, right]))) / math.log(2)
+    noise = float(np.median(np.concatenate([left, right]))) / _MEDIAN_OF_NOISE[n_signs]
     return Line(frequency_hz=peak * bin_hz, over_noise_db=decibels(float(density[peak]) / max(noise, 1e-20)))

@@ -89,10 +89,10 @@ class InputMeter:
         n_values = len(segments) * self._segment_len * len(least)
         noise_dbfs_hz = hum = lamp = None
         if spectra:
-            density = np.median(spectra, axis=0)
-            noise_dbfs_hz = decibels(noise_density(density, self._bin_hz, self._slowest_hz))
-            hum = strongest_line(density, self._bin_hz, self._mains_hz, HUM_MULTIPLES)
-            lamp = strongest_line(density, self._bin_hz, self._mains_hz, LAMP_MULTIPLES)
+            density, n_signs = np.median(spectra, axis=0), len(least)
+            noise_dbfs_hz = decibels(noise_density(density, self._bin_hz, self._slowest_hz, n_signs))
+            hum = strongest_line(density, self._bin_hz, self._mains_hz, HUM_MULTIPLES, n_signs)
+            lamp = strongest_line(density, self._bin_hz, self._mains_hz, LAMP_MULTIPLES, n_signs)
         return InputHealth(
             measured_s=len(segments) * self._segment_len / self._sample_rate_hz,
             level_dbfs=decibels(float(np.mean([one.power for one in segments]))),
