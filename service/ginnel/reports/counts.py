@@ -33,6 +33,8 @@ class CountRow:
     corrected: float | None  # by tallies; None as long as there are none
     coverage: float  # 0 to 1
     listened_s: float
+    speed_band: str | None = None  # None: all together; empty: of unknown speed
+    mover: str | None = None  # None: all together; empty: cannot be told
 
     @property
     def is_partial(self) -> bool:
@@ -78,9 +80,14 @@ def counts(
     tz: str | None = None,
     *,
     together: bool = False,
+    by_band: bool = False,
+    by_mover: bool = False,
 ) -> tuple[CountRow, ...]:
     """Count by interval and direction: see `iter_counts`."""
-    return tuple(iter_counts(store, sensors, start_us, end_us, every, tz, together=together))
+    rows = iter_counts(
+        store, sensors, start_us, end_us, every, tz, together=together, by_band=by_band, by_mover=by_mover
+    )
+    return tuple(rows)
 
 
 def iter_counts(
@@ -92,30 +99,35 @@ def iter_counts(
     tz: str | None = None,
     *,
     together: bool = False,
+    by_band: bool = False,
+    by_mover: bool = False,
 ) -> Iterator[CountRow]:
     """Count by sensor, interval and direction, in this order.
 
     Every interval has a row for approaching and one for receding, and one for unknown if the sensor
-    has any passage of unknown direction in the period; with ``together`` it has one row in all. The
+    has any passage of unknown direction in the period; with ``together`` it has one row in all. Asked
+    for by band or mover, each of these has a row for each speed band of the sensor, each kind of mover. The
     counts of an interval that was listened to in part are what was counted: coverage says how much
     of it that was, ``expanded`` what the whole may have had. A crossing may lie just outside the time
     listened; it is counted all the same.
     """
     names = chosen_sensors(store, sensors)
     cut_up = period(store, every, start_us, end_us, tz, names)
-    for cell in iter_cells(store, names, cut_up, together=together):
+    for cell in iter_cells(store, names, cut_up, together=together, by_band=by_band, by_mover=by_mover):
         low, high = (None, None) if cell.count is None else _limits(cell.count)
         yield CountRow(
             sensor=cell.sensor,
             interval_start_us=cell.start_us,
             interval_end_us=cell.end_us,
-            direction=cell.direction,
+            direction=cell.part.direction,
             count=cell.count,
             count_low=low,
             count_high=high,
             corrected=None,
             coverage=cell.coverage,
             listened_s=cell.listened_us / US_PER_S,
+            speed_band=cell.part.speed_band,
+            mover=cell.part.mover,
         )
 
 

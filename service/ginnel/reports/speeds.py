@@ -12,9 +12,11 @@ from ginnel import store as log
 from ginnel.reports.cells import iter_cells
 from ginnel.reports.intervals import Every, period
 from ginnel.reports.parts import chosen_sensors
+from ginnel.reports.speed_profile import speed_rollups, summary_of
 from ginnel.stats import SpeedSummary, band_counts, summarise_speeds
-from ginnel.store import Store
-from ginnel.words import Direction, FloatArray
+from ginnel.stats.counts import IntArray
+from ginnel.store import Rollup, Store
+from ginnel.words import Direction
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -27,6 +29,7 @@ class SpeedRow:
     direction: Direction | None  # None: all directions together
     summary: SpeedSummary | None  # None: never listened
     bands: tuple[int, ...] | None  # passages in each band of the sensor, slowest first
+    is_grouped: bool = False  # percentiles and bands come from classes of 1 cm/s: passages are gone
 
 
 def speeds(
@@ -55,7 +58,8 @@ def iter_speeds(
 ) -> Iterator[SpeedRow]:
     """Summarise speeds by sensor, interval and direction, in this order; rows as in `iter_counts`.
 
-    ``n`` is the number of passages with a measured speed, which may be fewer than passed.
+    ``n`` is the number of passages with a measured speed, which may be fewer than passed. Percentiles are
+    those of the passages, and where these are gone by retention those of the roll-ups, within 1 cm/s.
     """
     names = chosen_sensors(store, sensors)
     cut_up = period(store, every, start_us, end_us, tz, names)
@@ -65,43 +69,32 @@ def iter_speeds(
     ):
         passages = log.passage_arrays(store, sensor, int(cut_up.edges_us[0]), int(cut_up.edges_us[-1]))
         ways = {direction: passages.of(direction) for direction in (None, *Direction)}
+        rolled = None
         for cell in cells:
-            own = ways[cell.direction]
+            own = ways[cell.part.direction]
             first, last = np.searchsorted(own.crossed_us, [cell.start_us, cell.end_us])
             speed_mps = own.speed_mps[first:last]
+            summary = summarise_speeds(speed_mps)
+            is_grouped = cell.count is not None and cell.count > len(speed_mps)
+            if is_grouped:  # some passages are gone by retention: what they amounted to is kept
+                rolled = rolled or _by_start(store, sensor, cut_up.edges_us)
+                rollup = rolled[cell.part.direction, cell.start_us]
+                summary, speed_mps = summary_of(rollup), rollup.speed_mps()
             yield SpeedRow(
                 sensor=sensor,
                 interval_start_us=cell.start_us,
                 interval_end_us=cell.end_us,
-                direction=cell.direction,
-                summary=None if cell.count is None else summarise_speeds(speed_mps),
+                direction=cell.part.direction,
+                summary=None if cell.count is None else summary,
                 bands=None if cell.count is None else tuple(band_counts(speed_mps, bands[sensor]).tolist()),
+                is_grouped=is_grouped,
             )
 
 
-def speed_histogram(
-    store: Store,
-    sensor: str,
-    start_us: int | None = None,
-    end_us: int | None = None,
-    direction: Direction | None = None,
-    bin_mps: float = 0.1,
-) -> tuple[FloatArray, FloatArray, SpeedSummary]:
-    """Histogram of the speeds of one sensor, with their summary.
-
-    Returns
-    -------
-    edges_mps : array, shape (n + 1,), multiples of ``bin_mps`` from the one below the slowest
-    counts : array, shape (n,); both are empty where no speed was measured
-    summary : of the same speeds
-    """
-    if not bin_mps > 0:
-        raise ValueError(f"{bin_mps=} must be positive")
-    speed_mps = log.passage_arrays(store, sensor, start_us, end_us).of(direction).speed_mps
-    measured = speed_mps[np.isfinite(speed_mps)]
-    summary = summarise_speeds(measured)
-    if not len(measured):
-        return np.empty(0), np.empty(0), summary
-    first, last = np.floor(measured.min() / bin_mps), np.floor(measured.max() / bin_mps) + 1
-    edges_mps = np.arange(first, last + 1) * bin_mps
-    return edges_mps, band_counts(measured, edges_mps[1:-1].tolist()).astype(float), summary
+def _by_start(store: Store, sensor: str, edges_us: IntArray) -> dict[tuple[Direction | None, int], Rollup]:
+    """Roll-ups of a sensor by direction and start of the interval."""
+    return {
+        (direction, start_us): rollup
+        for direction, rollups in speed_rollups(store, sensor, edges_us).items()
+        for start_us, rollup in zip(edges_us[:-1].tolist(), rollups, strict=True)
+    }

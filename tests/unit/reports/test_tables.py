@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-import numpy as np
 import pytest
 
 from ginnel.errors import ConfigError, StoreError
@@ -21,7 +20,6 @@ from ginnel.reports import (
     period,
     sensor_facts,
     site,
-    speed_histogram,
     speeds,
 )
 from ginnel.store import Store, put_sensor, record_span
@@ -200,17 +198,6 @@ def test_speeds_together(filled: Store) -> None:
     assert row.summary is not None
     assert row.summary.n == 4
     assert row.summary.mean_mps == pytest.approx(1.25)
-
-
-def test_histogram_holds_every_measured_speed_once(filled: Store) -> None:
-    edges_mps, held, summary = speed_histogram(filled, "north", bin_mps=0.5)
-    np.testing.assert_allclose(edges_mps, [0.5, 1.0, 1.5, 2.0, 2.5])
-    assert held.tolist() == [1, 1, 1, 1]
-    assert summary.n == 4
-    edges_mps, held, summary = speed_histogram(filled, "north", direction=R)
-    assert (len(edges_mps), len(held), summary.n) == (0, 0, 0)
-    with pytest.raises(ValueError, match="must be positive"):
-        speed_histogram(filled, "north", bin_mps=0)
 
 
 def test_entries_carry_a_lasting_name_and_the_sensors_own_band(filled: Store) -> None:
