@@ -86,6 +86,11 @@ class MinuteWatch:
             findings += sensor_findings(minute, self._usual_of(store, minute, now.wall_us))
         changes += self._watch.push(now.wall_us, findings)
         self._tell(changes)
+        if store is not None and self._has_adopted:
+            try:
+                self._save_conditions(store)
+            except StoreError as exc:
+                log.debug("conditions wait: %s", exc)  # the next minute raises one of its own
         return changes
 
     def _save(self, store: Store) -> None:
@@ -99,10 +104,14 @@ class MinuteWatch:
             )
             self._watch.adopt(raised)
             self._has_adopted = True
-        log_on_disk.put_conditions(store, tuple(self._untold))
-        self._untold.clear()
+        self._save_conditions(store)
         log_on_disk.put_health(store, tuple(self._unsaved))
         self._unsaved.clear()
+
+    def _save_conditions(self, store: Store) -> None:
+        if self._untold:
+            log_on_disk.put_conditions(store, tuple(self._untold))
+            self._untold.clear()
 
     def _usual_of(self, store: Store | None, minute: SensorMinute, now_us: int) -> Usual:
         name = minute.sensor.name
