@@ -18,8 +18,9 @@ if TYPE_CHECKING:
     from ginnel.export import Question
     from ginnel.store import Store
 
-_TABLES = ["passages", "counts", "speeds", "occupancy", "health"]
+_TABLES = ["passages", "counts", "speeds", "occupancy", "health", "summary"]
 _FORMATS = ["csv", "jsonl", "parquet", "xlsx", "tmg"]
+_SUMMARY_FORMATS = ["html", "pdf"]
 _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
 
 
@@ -35,7 +36,10 @@ _INTERVALS = ["5min", "15min", "hour", "day", "week", "month"]
     "--every", type=click.Choice(_INTERVALS), default="hour", show_default=True, help="Length of an interval."
 )
 @click.option(
-    "--format", "kind", type=click.Choice(_FORMATS), default="csv", show_default=True, help="Kind of file."
+    "--format",
+    "kind",
+    type=click.Choice(_FORMATS + _SUMMARY_FORMATS),
+    help="Kind of file.  [default: csv; html for a summary]",
 )
 @click.option("--uncounted", is_flag=True, help="Passages: turn-backs and fidgeting too, which do not count.")
 @click.option(
@@ -51,20 +55,22 @@ def export(
     start: datetime | None,
     end: datetime | None,
     every: str,
-    kind: str,
+    kind: str | None,
     uncounted: bool,
     partitioned: bool,
     output: Path | None,
 ) -> None:
-    """Write TABLE, one of passages, counts, speeds, occupancy and health, as a file.
+    """Write TABLE, one of passages, counts, speeds, occupancy and health, as a file; or a summary to print.
 
     Beside a file NAME.csv comes NAME.datapackage.json, which says what the columns are. An interval that
     nobody listened to has a blank count, not zero. A workbook (xlsx) may hold several tables.
+    A summary is a page a sensor: table, charts, coverage, method and cautions.
 
     \b
     For example, the counts of March, day by day:
       ginnel export counts --every day --from 2026-03-01 --to 2026-04-01 --output march.csv
     """  # noqa: D301 (the backspace is click's mark for lines that stay as they are)
+    kind = kind or ("html" if tables == ("summary",) else "csv")
     _check_usage(tables, kind, every, uncounted=uncounted, partitioned=partitioned, output=output)
     from ginnel import export as files
     from ginnel.config import load_settings
@@ -86,10 +92,13 @@ def export(
         if kind == "tmg":
             stations = {one.name: one.station for one in settings.sensor if one.station is not None}
             n_rows = _write_records(store, tables[0], asked, stations, output)
+        elif kind in _SUMMARY_FORMATS:
+            n_rows = _write_summary(store, asked, kind, output)
         else:
             n_rows = _write(store, tables, asked, kind, partitioned=partitioned, output=output)
     if output is not None:
-        click.echo(f"{output}: {n_rows} rows", err=True)
+        what = "pages" if kind in _SUMMARY_FORMATS else "rows"
+        click.echo(f"{output}: {n_rows} {what}", err=True)
 
 
 def _check_usage(
@@ -101,7 +110,9 @@ def _check_usage(
         raise click.UsageError("each table goes in once")
     if len(tables) > 1 and kind != "xlsx":
         raise click.UsageError("several tables go together with --format xlsx only")
-    if kind in ("parquet", "xlsx") and output is None:
+    if ("summary" in tables) != (kind in _SUMMARY_FORMATS):
+        raise click.UsageError("html and pdf are for a summary, and a summary is html or pdf")
+    if kind in ("parquet", "xlsx", "pdf") and output is None:
         raise click.UsageError(f"{kind} needs --output FILE")
     if kind == "tmg" and (tables[0] not in ("counts", "speeds") or every != "hour"):
         raise click.UsageError("tmg has counts or speeds by the hour")
@@ -140,3 +151,12 @@ def _write_records(
     if records.n_without_direction:
         click.echo(f"{records.n_without_direction} passages of unknown direction are in no record", err=True)
     return len(records.lines)
+
+
+def _write_summary(store: Store, asked: Question, kind: str, output: Path | None) -> int:
+    from ginnel.export.summary import summaries
+    from ginnel.export.summary_pages import write_summary
+
+    pages = summaries(store, asked)
+    write_summary(pages, sys.stdout.buffer if output is None else output, kind)
+    return len(pages)
