@@ -63,7 +63,7 @@ class Dating:
         self._low_us = math.inf  # the earliest that the first sample can have been taken, steady clock
         self._first_us = math.inf
         self._low_before_us: float | None = None
-        self._window_from_us = 0
+        self._dated_us = self._window_from_us = 0
 
     @property
     def drift_ppm(self) -> float | None:
@@ -166,7 +166,8 @@ class Dating:
             samples = samples[early:]
         self._started_us, self.is_trusted = started_us, at.is_set
         self._n, self._held = len(samples), []
-        self._first_us, self._window_from_us = self._low_us, at.steady_us
+        self._first_us = self._low_us
+        self._dated_us = self._window_from_us = at.steady_us
         self._low_us = math.inf
         self._is_rate_doubted, self.fault = False, None
         return [self._block(samples, 0)]
@@ -197,8 +198,7 @@ class Dating:
             self._low_before_us, self._low_us, self._window_from_us = self._low_us, math.inf, now_us
             if drift_us < MOST_DRIFT_US:
                 return None
-        lasted_us = max(now_us - self._first_us, 1)
-        error = -drift_us / lasted_us
+        error = -drift_us / max(now_us - self._dated_us, 1)
         if abs(error) > _WRONG_RATE:
             self._is_rate_doubted = True
             self.fault = self._rate_text(error)

@@ -42,14 +42,14 @@ class Link(Protocol):
 class PipeLink:
     """A FIFO, or standard input."""
 
-    def __init__(self, path: str) -> None:
-        self._path = path
+    def __init__(self, path: str, stdin_fd: int = 0) -> None:
+        self._path, self._stdin_fd = path, stdin_fd
         self._fd: int | None = None
 
     def open(self) -> None:
         """Open the FIFO for both ways, so that a writer may come and go."""
         if self._path == "-":
-            self._fd = 0
+            self._fd = self._stdin_fd
             return
         try:
             if not _is_pipe(Path(self._path)):
@@ -73,7 +73,7 @@ class PipeLink:
 
     def close(self) -> None:
         """Close the FIFO; standard input is not ours to close."""
-        if self._fd not in (None, 0):
+        if self._fd is not None and self._path != "-":
             os.close(self._fd)
         self._fd = None
 

@@ -25,6 +25,8 @@ SILENT_S = 5.0
 _FIRST_RETRY_S = 0.5
 _POLL_S = 0.1
 _IDLE_S = 0.5
+#: A device that hangs is left to itself after so long.
+_CLOSE_S = 5.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,6 +74,9 @@ class StreamSource:
         self._reader = threading.Thread(target=self._read, name="ginnel-reader", daemon=True)
         self._link_fault: str | None = "not opened yet"
         self._failure: Exception | None = None
+        self.is_open = False
+        #: Samples that came over the link, kept or not.
+        self.n_arrived = 0
 
     @property
     def state(self) -> SourceState:
@@ -111,7 +116,7 @@ class StreamSource:
         """Stop reading and let go of the link."""
         self._stop.set()
         if self._reader.is_alive() and threading.current_thread() is not self._reader:
-            self._reader.join()
+            self._reader.join(_CLOSE_S)
 
     def _read(self) -> None:
         """Read until told to stop, opening the link again whenever it is lost (the thread)."""
@@ -121,6 +126,7 @@ class StreamSource:
                 try:
                     self._link.open()
                     self._decoder.reset()
+                    self.is_open = True
                     if self._read_link():
                         return
                 except SourceLostError as exc:
@@ -129,6 +135,7 @@ class StreamSource:
                     self._link_fault = str(exc)
                     self._inbox.put(_Lost(str(exc)))
                 finally:
+                    self.is_open = False
                     self._link.close()
                 self._clock.wait(self._stop, wait_s)
                 wait_s = min(2 * wait_s, self._retry_s)
@@ -148,8 +155,10 @@ class StreamSource:
             at = self._clock.read()
             if part and (len(part) >= part_bytes or not chunk.data or chunk.is_end):
                 self._link_fault = None
-                self._inbox.put(_Arrival(self._decoder.push(bytes(part)), at))
+                samples = self._decoder.push(bytes(part))
                 part.clear()
+                self._inbox.put(_Arrival(samples, at))
+                self.n_arrived += len(samples)
             if chunk.is_end:
                 self._inbox.put(_Lost("the input has ended", is_end=True))
                 return True
