@@ -33,10 +33,11 @@ PORT = 8470
 def demo(folder: Path | None, no_serve: bool, port: int | None, quiet: bool) -> None:
     """See the whole job on invented data, with nothing to configure.
 
-    Makes the captures of a morning at two sensors, finds the passages in them, compares them with who really
-    walked there, and shows the dashboard until Ctrl-C.
+    Makes the captures of a day at two sensors, finds the passages in them, compares them with who really
+    walked there, and shows the dashboard until Ctrl-C. The eight weeks before that day are drawn from an
+    invented pattern, and marked so.
     """
-    from ginnel import demo as morning
+    from ginnel import demo as place
     from ginnel.cli.progress import progress
     from ginnel.config import Settings
     from ginnel.errors import GinnelError
@@ -53,9 +54,9 @@ def demo(folder: Path | None, no_serve: bool, port: int | None, quiet: bool) -> 
     with ExitStack() as stack:
         if folder is None:
             folder = Path(stack.enter_context(tempfile.TemporaryDirectory(prefix="ginnel-demo-")))
-        settings = morning.prepare(folder)
-        with progress("A morning at the Tannery annex", morning.work_s(settings), quiet=quiet) as advance:
-            tallies = morning.run(settings, advance)
+        settings = place.prepare(folder)
+        with progress("A day at the Tannery annex", place.work_s(), quiet=quiet) as advance:
+            tallies = place.run(settings, advance, lambda: place.draw_weeks(settings))
         if not quiet:
             click.echo("\n".join(table(tallies)))
         if no_serve:

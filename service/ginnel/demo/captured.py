@@ -1,7 +1,7 @@
-"""An invented morning at an invented place: captures, the real chain over them, and how well it counted.
+"""An invented day at an invented place: captures, the real chain over them, and how well it counted.
 
-Two sensors, three hours each, an hour in a file, with twelve minutes that nobody recorded. Who walks
-there is drawn from a seed, so that everybody sees the same morning.
+The corridor is recorded from seven to seven, with twelve minutes that nobody recorded, the yard gate in the
+morning only. An hour is in a file. Who walks there is drawn from a seed, so that everybody sees the same day.
 """
 
 from __future__ import annotations
@@ -20,54 +20,33 @@ from typing import TypeAlias, TypeVar
 from ginnel import sim
 from ginnel.capture import RecordedSpan, arrange, find_captures, open_recording
 from ginnel.chain import CHAIN_VERSION
-from ginnel.config import Settings, load_settings
-from ginnel.errors import ConfigError, GinnelError
+from ginnel.config import Settings
+from ginnel.errors import GinnelError
 from ginnel.replay import find_passages
-from ginnel.store import open_store, put_site, record_span
+from ginnel.store import open_store, record_span
 from ginnel.words import US_PER_S, Channels, Direction, Passage, Sensor, Story
 
-SETTINGS_TEXT = """\
-# The demo's settings: an invented place. `ginnel serve` in this folder shows its log again.
-[site]
-name = "Tannery annex"
-timezone = "Europe/Dublin"
-
-[store]
-url = "sqlite:///ginnel.db"
-
-[[sensor]]
-name = "north-corridor"
-carrier_hz = 10.525e9
-channels = "mono"
-highpass_hz = 8.0
-[sensor.mounting]
-height_m = 2.4
-tilt_deg = 15.0
-[sensor.directions]
-approaching = "to the workshops"
-receding = "to the street"
-[sensor.source]
-path = "captures/north-corridor"
-
-[[sensor]]
-name = "yard-gate"
-carrier_hz = 24.125e9
-channels = "iq"
-[sensor.mounting]
-height_m = 2.2
-offset_m = 0.4
-tilt_deg = 10.0
-[sensor.directions]
-approaching = "in from the yard"
-receding = "out to the yard"
-[sensor.source]
-path = "captures/yard-gate"
-"""
-
-SAMPLE_RATE_HZ = 2000.0
-STARTED_US = 1_772_434_800 * US_PER_S  # Monday 2026-03-02, 07:00 in Dublin
-#: start and length in minutes, walkers an hour, share of them approaching
-HOURS = ((0, 60, 8, 0.8), (60, 48, 20, 0.7), (120, 60, 12, 0.55))
+#: Enough for a walker's limbs at each carrier, and captures that stay small.
+SAMPLE_RATE_HZ = {"north-corridor": 1000.0, "yard-gate": 2000.0}
+STARTED_US = 1_776_664_800 * US_PER_S  # Monday 2026-04-20, 07:00 in Dublin
+#: By sensor: minute of the day's start and length in minutes, walkers an hour, share of them approaching.
+HOURS = {
+    "north-corridor": (
+        (0, 60, 3, 0.8),
+        (60, 48, 7, 0.8),
+        (120, 60, 2, 0.6),
+        (180, 60, 1, 0.5),
+        (240, 60, 1, 0.5),
+        (300, 60, 2, 0.3),
+        (360, 60, 2, 0.6),
+        (420, 60, 1, 0.5),
+        (480, 60, 1, 0.5),
+        (540, 60, 2, 0.2),
+        (600, 60, 4, 0.2),
+        (660, 60, 1, 0.3),
+    ),
+    "yard-gate": ((0, 60, 7, 0.8), (60, 48, 12, 0.7), (120, 60, 8, 0.55)),
+}
 EDGE_S = 15.0
 CHAIN_WORK = 6.0  # reading a second costs about so many times what making it does; only the bar asks
 
@@ -89,32 +68,15 @@ class Tally:
     listened_s: float
 
 
-def prepare(folder: Path) -> Settings:
-    """Write the demo's settings into a folder, which may hold them already.
-
-    Raises
-    ------
-    ConfigError
-        The folder holds other settings, or cannot be written.
-    """
-    file = folder / "ginnel.toml"
-    try:
-        folder.mkdir(parents=True, exist_ok=True)
-        if file.exists() and file.read_text("utf-8") != SETTINGS_TEXT:
-            raise ConfigError(f"{file} is not the demo's: give the demo a folder of its own")
-        file.write_text(SETTINGS_TEXT, "utf-8")
-    except OSError as exc:
-        raise ConfigError(f"{file} cannot be written: {exc.strerror}") from exc
-    return load_settings(file)
-
-
-def work_s(settings: Settings) -> float:
+def work_s() -> float:
     """How much `run` has to do, in the unit of its progress."""
-    return len(settings.sensor) * sum(60.0 * minutes for _, minutes, _, _ in HOURS) * (1 + CHAIN_WORK)
+    return sum(60.0 * minutes for hours in HOURS.values() for _, minutes, _, _ in hours) * (1 + CHAIN_WORK)
 
 
-def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
+def run(settings: Settings, on_progress: OnProgress, meanwhile: Callable[[], None]) -> list[Tally]:
     """Make all captures, read them, store what was found, and compare; two processes share the work.
+
+    ``meanwhile`` is done in this process while those two make captures.
 
     Raises
     ------
@@ -132,14 +94,14 @@ def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
     with (
         ProcessPoolExecutor(2, mp_context=spawn, initializer=_begin, initargs=(told, stop)) as pool,
         _stopping(pool, stop),
-        open_store(settings.store.url, create=True) as store,
+        open_store(settings.store.url) as store,
     ):
-        put_site(store, settings.site.to_site())
         making = {
             pool.submit(make_capture, sensors[name], folders[name], hour): name
-            for hour in range(len(HOURS))
             for name in sensors
+            for hour in range(len(HOURS[name]))
         }
+        meanwhile()
         for made in _finished(making, told, on_progress):
             true[making[made]] += made.result()
         spans = [(name, span) for name in sensors for span in recorded_spans(sensors[name], folders[name])]
@@ -156,7 +118,7 @@ def run(settings: Settings, on_progress: OnProgress) -> list[Tally]:
 
 def make_capture(sensor: Sensor, folder: Path, hour: int) -> list[sim.TrueMover]:
     """Write the capture of one hour, and its truth beside it; gives the truth."""
-    minute, minutes, per_hour, share_approaching = HOURS[hour]
+    minute, minutes, per_hour, share_approaching = HOURS[sensor.name][hour]
     started_us, duration_s = STARTED_US + 60 * minute * US_PER_S, 60.0 * minutes
     seed = 10 * hour + (sensor.channels is Channels.IQ)
     walkers = sim.poisson_walkers(
@@ -168,7 +130,11 @@ def make_capture(sensor: Sensor, folder: Path, hour: int) -> list[sim.TrueMover]
         seed=seed,
     )
     scene = sim.Scene(
-        sensor=sensor, duration_s=duration_s, sample_rate_hz=SAMPLE_RATE_HZ, movers=walkers, seed=seed
+        sensor=sensor,
+        duration_s=duration_s,
+        sample_rate_hz=SAMPLE_RATE_HZ[sensor.name],
+        movers=walkers,
+        seed=seed,
     )
     try:
         folder.mkdir(parents=True, exist_ok=True)
