@@ -8,6 +8,7 @@
     |   +-- CaptureFormatError   a file is not what it claims to be
     |   +-- SourceLostError      a live source has gone, or sends nothing: try again
     |   +-- CaptureTimeError     nobody knows when it starts, or it overlaps another
+    +-- ImportFormatError    a file of counts is not what it should be
     +-- ExportError          a file cannot be written
     +-- StoreError           the log cannot be read or written
         +-- StoreBusyError       locked or unreachable: try again
@@ -42,6 +43,10 @@ class CaptureTimeError(CaptureError):
 
 class SourceLostError(CaptureError):
     """A live source has gone, or sends nothing; trying again may help."""
+
+
+class ImportFormatError(GinnelError):
+    """A file of counts that others made is not what it should be."""
 
 
 class ExportError(GinnelError):

@@ -16,6 +16,7 @@ from ginnel.reports.intervals import Every, Period, cut, period, zone
 from ginnel.reports.occupancy import OccupancyRow, iter_occupancy, occupancy
 from ginnel.reports.passages import PassageEntry, iter_entries, latest_passages
 from ginnel.reports.peaks import PeakHour, busiest, daily_peaks, daily_peaks_of
+from ginnel.reports.series import series_flow
 from ginnel.reports.speeds import SpeedRow, iter_speeds, speeds
 from ginnel.reports.unusual import Finding, Oddity, unusual, unusual_of
 from ginnel.reports.volumes import Volumes, volumes, volumes_of
@@ -63,6 +64,7 @@ __all__ = [
     "occupancy",
     "period",
     "sensor_facts",
+    "series_flow",
     "site",
     "speeds",
     "unusual",

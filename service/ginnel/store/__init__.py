@@ -59,6 +59,7 @@ from ginnel.store.retention import (
 )
 from ginnel.store.rollup import Rollup, merge
 from ginnel.store.schema import check, current, upgrade
+from ginnel.store.series import Series, SeriesArrays, SeriesCount, all_series, put_series, series_arrays
 from ginnel.store.vacuum import vacuum
 
 __all__ = [
@@ -74,8 +75,12 @@ __all__ = [
     "PassageArrays",
     "PassageColumns",
     "Rollup",
+    "Series",
+    "SeriesArrays",
+    "SeriesCount",
     "SpanChange",
     "Store",
+    "all_series",
     "are_whole_hours",
     "back_up",
     "backups",
@@ -110,12 +115,14 @@ __all__ = [
     "put_health",
     "put_job",
     "put_sensor",
+    "put_series",
     "put_site",
     "record_span",
     "redate_span",
     "restore_sqlite",
     "roll_up_hours",
     "sensors",
+    "series_arrays",
     "site",
     "spans",
     "upgrade",

@@ -18,7 +18,7 @@ if TYPE_CHECKING:
     from alembic.config import Config
 
 #: The revision that this version of Ginnel reads and writes. Revisions are numbered, so order tells age.
-HEAD = "0003"
+HEAD = "0005"
 
 _LOCK = 0x67696E6E  # any fixed number: two upgrades of one PostgreSQL store take turns
 

@@ -294,3 +294,31 @@ class WebKeyRow(Base):
 
     id: Mapped[int] = mapped_column(Integer, primary_key=True, autoincrement=False)
     secret: Mapped[bytes] = mapped_column(LargeBinary)
+
+
+class SeriesRow(Base):
+    """Counts that others made, by the name that they were given here."""
+
+    __tablename__ = "series"
+
+    id: Mapped[int] = mapped_column(Integer, primary_key=True)
+    name: Mapped[str] = mapped_column(String(64), unique=True)
+    source: Mapped[str] = mapped_column(String)
+
+
+class SeriesCountRow(Base):
+    """One interval that others counted, [started_us, ended_us)."""
+
+    __tablename__ = "series_count"
+    __table_args__ = (
+        CheckConstraint("direction IN (0, 1, 2)", name="direction"),
+        CheckConstraint("ended_us > started_us", name="order"),
+        CheckConstraint("count >= 0", name="count"),
+        {"sqlite_with_rowid": False},
+    )
+
+    series_id: Mapped[int] = mapped_column(ForeignKey("series.id"), primary_key=True)
+    started_us: Mapped[int] = mapped_column(BigInteger, primary_key=True)
+    direction: Mapped[int] = mapped_column(SmallInteger, primary_key=True)
+    ended_us: Mapped[int] = mapped_column(BigInteger)
+    count: Mapped[int] = mapped_column(Integer)
