@@ -3,15 +3,24 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.stats import binomtest
-from tests.accuracy import nobody, people, roads
+from tests.accuracy import days, nobody, people, roads, trouble
 from tests.accuracy.cases import Row
+from tests.accuracy.hardness import hard
 from tests.accuracy.scoring import Outcome
 
-ROWS: tuple[Row, ...] = (*people.ROWS, *roads.ROWS, *nobody.ROWS)
+from ginnel.words import Direction
+
+_SCENES = (*people.ROWS, *roads.ROWS, *days.ROWS)
+#: Each scene with its hard variant behind it; a sensor in trouble and disturbances have none.
+ROWS: tuple[Row, ...] = (
+    *(one for row in _SCENES for one in (row, hard(row))),
+    *trouble.ROWS,
+    *nobody.ROWS,
+)
 
 _HEAD = (
     "scenario",
@@ -91,6 +100,10 @@ def verdicts(row: Row, outcome: Outcome) -> list[Verdict]:
     also = []
     if outcome.n_others:
         also.append(share_below(outcome.n_others_counted, outcome.n_others, goals.counted_share))
+    if goals.is_day:
+        also += day_verdicts(outcome)
+    if outcome.n_unsettled:
+        also.append(Verdict(text=f"{outcome.n_unsettled} flagged unsettled"))
     return [
         Verdict(text=str(outcome.n_true) if outcome.n_true else ""),
         share(len(outcome.pairs), outcome.n_true, goals.recall),
@@ -112,6 +125,30 @@ def share_below(n_counted: int, n: int, goal: float | None) -> Verdict:
     if goal is None:
         return Verdict(text=text)
     return Verdict(text=f"{text} (<= {goal:.0%})", is_met=n_counted / n <= goal)
+
+
+def day_verdicts(outcome: Outcome) -> list[Verdict]:
+    """Counts of 15 minutes, direction split and 85th percentile against the truth of the whole stretch."""
+    true_n, found_n = np.array(outcome.quarters).T
+    off_each = np.abs(found_n - true_n)
+    off_sum_percent = 100.0 * abs(found_n.sum() / true_n.sum() - 1.0)
+    within = (off_each <= np.maximum(1, 0.06 * true_n)).sum()
+    true_share, found_share = (
+        100.0 * np.mean([way is Direction.APPROACHING for way in ways])
+        for ways in (outcome.true_ways, outcome.found_ways)
+    )
+    true_p85, found_p85 = (np.percentile(s, 85) for s in (outcome.true_speeds_mps, outcome.found_speeds_mps))
+    return [
+        Verdict(text=f"sum off {off_sum_percent:.1f} % (<= 3)", is_met=off_sum_percent <= 3.0),
+        Verdict(text=f"{within} of {len(true_n)} quarters within 6 % or one", is_met=within == len(true_n)),
+        at_most_of("direction split off by points", float(abs(found_share - true_share)), 2.0),
+        at_most_of("85th percentile off by %", 100.0 * abs(float(found_p85 / true_p85) - 1.0), 2.0),
+    ]
+
+
+def at_most_of(what: str, value: float, goal: float) -> Verdict:
+    """A named size against a goal that it should keep below."""
+    return replace(at_most(value, goal), text=f"{what} {at_most(value, goal).text}")
 
 
 def table(results: Sequence[tuple[Row, Outcome]]) -> str:

@@ -49,6 +49,7 @@ class Goals:
     mae_percent: float | None = None
     false_per_day: float | None = None
     counted_share: float | None = None  # of those who did not pass
+    is_day: bool = False  # counts of 15 minutes, direction split and 85th percentile, as `days` says
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -106,8 +106,13 @@ def unplugged(seed: int) -> Case:
 
 
 def dead_module(seed: int) -> Case:
-    """A module without supply: a few steps of the converter, and its offset."""
-    return _empty(seed, peak_level=2e-5, receiver=sim.Receiver(bits=12, offset=0.01, flicker_corner_hz=30.0))
+    """A module without supply: an offset, and noise of far less than a converter's step to a few of them."""
+    rng = _rng(seed)
+    return _empty(
+        seed,
+        peak_level=float(10 ** rng.uniform(-5.0, -2.0)),  # noise of 0.007 to 7 steps of 1 / 2048
+        receiver=sim.Receiver(bits=12, offset=float(rng.uniform(-0.02, 0.02)), flicker_corner_hz=30.0),
+    )
 
 
 def _row(name: str, make: object, false_per_day: float, seeds: int = 3) -> Row:
@@ -120,6 +125,6 @@ ROWS = (
     _row("nobody: rain and leaves", weather, 2.0),
     _row("nobody: doors", doors, 4.0),
     _row("nobody: relay clicks", relays, 1.0),
-    _row("nobody: unplugged", unplugged, 0.0, 1),
-    _row("nobody: dead module", dead_module, 0.0, 1),
+    _row("nobody: unplugged", unplugged, 0.0, 2),
+    _row("nobody: dead module", dead_module, 0.0, 3),
 )

@@ -35,7 +35,7 @@ def singles(
     rng = np.random.default_rng([seed, 2])
     first, learnt_s = places.learnt(rng)
     movers, until_s = places.one_by_one(rng, n, from_s=learnt_s)
-    receiver = sim.Receiver(iq=iq, offset=0.02 + 0.01j) if iq else sim.Receiver()
+    receiver = sim.Receiver(iq=iq, offset=0.02 + 0.01j, offset_drift=0.05 - 0.03j) if iq else sim.Receiver()
     return places.corridor_case(
         first + movers,
         until_s,

@@ -1,4 +1,4 @@
-"""Rows scored in worker processes."""
+"""Work shared out to worker processes, and rows scored there."""
 
 from __future__ import annotations
 
@@ -6,39 +6,33 @@ import multiprocessing
 import os
 from collections.abc import Callable, Sequence
 from concurrent.futures import ProcessPoolExecutor, as_completed
+from typing import TypeVar
 
 from tests.accuracy.cases import Row
 from tests.accuracy.scoring import Outcome, score
 
+Result = TypeVar("Result")
 OnProgress = Callable[[int, int], None]
 
 
-def run(
-    rows: Sequence[Row],
-    *,
-    n_seeds: int | None = None,
-    first_seed: int = 0,
-    jobs: int = 2,
-    on_progress: OnProgress = lambda done, n: None,
-) -> list[Outcome]:
-    """Score rows, each on so many seeds (its own number if not given); one outcome a row, in order."""
+def in_workers(
+    calls: Sequence[Callable[[], Result]], jobs: int, on_progress: OnProgress = lambda done, n: None
+) -> list[Result]:
+    """Results of calls that can be pickled, in their order, whoever comes first."""
     # Each worker keeps to one core: the libraries read this when they are loaded there.
     os.environ["OPENBLAS_NUM_THREADS"] = os.environ["OMP_NUM_THREADS"] = "1"
-    numbers = [number for number, row in enumerate(rows) for _ in range(n_seeds or row.seeds)]
-    seeds = [first_seed + seed for row in rows for seed in range(n_seeds or row.seeds)]
     with ProcessPoolExecutor(jobs, mp_context=multiprocessing.get_context("spawn")) as pool:
-        futures = [
-            pool.submit(run_one, rows[number], seed) for number, seed in zip(numbers, seeds, strict=True)
-        ]
+        futures = [pool.submit(call) for call in calls]
         for done, _ in enumerate(as_completed(futures), start=1):
             on_progress(done, len(futures))
-    # Summed in order of the seeds, whoever came first.
-    sums = [Outcome() for _ in rows]
-    for number, future in zip(numbers, futures, strict=True):
-        sums[number] += future.result()
-    return sums
+        return [future.result() for future in futures]
 
 
-def run_one(row: Row, seed: int) -> Outcome:
+def seeds_of(row: Row, n_seeds: int | None, first_seed: int) -> range:
+    """Seeds of a row's scenes: so many, or its own number."""
+    return range(first_seed, first_seed + (n_seeds or row.seeds))
+
+
+def score_one(row: Row, seed: int) -> Outcome:
     """Make a case and score it."""
     return score(row.make(seed))

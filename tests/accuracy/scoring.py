@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 from scipy.optimize import linear_sum_assignment
@@ -50,7 +50,8 @@ class Outcome:
 
     ``n_others`` are movers who did not pass, ``n_others_counted`` those of them within whose time a false
     passage lies. ``missed_s`` and ``false_s`` are moments in the case, to look at. ``quarters`` are counts
-    of 15 minutes (true, found). ``n_unsettled`` are pairs flagged so.
+    of 15 minutes (true, found), the last four fields what the log and the truth hold for such sums, matched
+    or not. ``n_unsettled`` are pairs flagged so.
     """
 
     pairs: tuple[Pair, ...] = ()
@@ -62,7 +63,11 @@ class Outcome:
     n_unsettled: int = 0
     listened_s: float = 0.0
     took_s: float = 0.0
-    quarters: tuple[tuple[int, int], ...] = field(default=())
+    quarters: tuple[tuple[int, int], ...] = ()
+    true_ways: tuple[Direction, ...] = ()
+    found_ways: tuple[Direction, ...] = ()
+    true_speeds_mps: tuple[float, ...] = ()
+    found_speeds_mps: tuple[float, ...] = ()
 
     def __add__(self, other: Outcome) -> Outcome:
         """Both together."""
@@ -159,6 +164,7 @@ def compare(case: Case, found: list[Passage], took_s: float = 0.0) -> Outcome:
     free_s = [at_s for number, at_s in enumerate(found_s) if number not in taken and at_s >= case.learnt_s]
     matched_s = crossed_s[sorted(partner)] if partner else np.array([])
     doubles = sum(bool((np.abs(matched_s - at_s) <= WITHIN_S).any()) for at_s in free_s)
+    late = [one for one in counted if one.crossed_us / US_PER_S >= case.learnt_s]
     others = [true for _, true in told if true.crossed_s is None]
     return Outcome(
         pairs=tuple(pairs),
@@ -173,6 +179,10 @@ def compare(case: Case, found: list[Passage], took_s: float = 0.0) -> Outcome:
         listened_s=sum(end_s - begin_s for begin_s, end_s in case.spans_s) - case.learnt_s,
         took_s=took_s,
         quarters=_quarters(case, crossed_s, found_s),
+        true_ways=tuple(true.direction for _, true in passed if _is_scored(case, true)),
+        found_ways=tuple(one.direction for one in late if one.direction is not Direction.UNKNOWN),
+        true_speeds_mps=tuple(true.mean_speed_mps for _, true in passed if _is_scored(case, true)),
+        found_speeds_mps=tuple(one.speed_mps for one in late if one.speed_mps is not None),
     )
 
 

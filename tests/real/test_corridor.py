@@ -53,8 +53,8 @@ class Person:
         return float(abs(x[-1] - x[0]) / (t[-1] - t[0]))
 
 
-@pytest.fixture(scope="module")
-def people(trajectories: Path) -> list[Person]:
+def read_people(trajectories: Path) -> list[Person]:
+    """All walks of the experiment."""
     with gzip.open(trajectories / "hermes_boa-300-frei.txt.gz") as lines:
         rows = np.loadtxt(lines)
     middle_cm = np.median(rows[:, 2])
@@ -99,11 +99,21 @@ class Watched:
         )
 
 
+@pytest.fixture(scope="module")
+def people(trajectories: Path) -> list[Person]:
+    return read_people(trajectories)
+
+
 @pytest.fixture(scope="module", params=[Channels.MONO, Channels.IQ])
 def watched(request: pytest.FixtureRequest, people: list[Person]) -> Watched:
+    return watch(people, request.param)
+
+
+def watch(people: list[Person], channels: Channels) -> Watched:
+    """Put everybody under a sensor at the corridor's end, and read what it hears."""
     sensor = Sensor(
         name="corridor-end",
-        channels=request.param,
+        channels=channels,
         mounting=Mounting(height_m=2.4, tilt_deg=15.0, beam_width_deg=(80.0, 40.0)),
     )
     scene = sim.Scene(
@@ -133,7 +143,7 @@ def watched(request: pytest.FixtureRequest, people: list[Person]) -> Watched:
     )
     matched = zip(*linear_sum_assignment(np.minimum(apart_s, 10 * WITHIN_S)), strict=True)
     pairs = [(people[i], passages[j]) for i, j in matched if apart_s[i, j] <= WITHIN_S]
-    return Watched(request.param, passages, pairs)
+    return Watched(channels, passages, pairs)
 
 
 def test_fifty_people_are_fifty_passages_within_one(watched: Watched, people: list[Person]) -> None:

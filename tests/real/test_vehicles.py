@@ -50,13 +50,17 @@ class Roadside:
 
 @pytest.fixture(scope="module")
 def roadside(recordings: Path, tmp_path_factory: pytest.TempPathFactory) -> Roadside:
+    return read_roadside(recordings, tmp_path_factory.mktemp("roadside"))
+
+
+def read_roadside(recordings: Path, stores: Path) -> Roadside:
     """All eight recordings, each label matched to the nearest passage of its direction."""
     folder = recordings / "vehicles-24ghz"
     labels = read_labels(folder / "labels.csv")
     vehicles: list[Vehicle] = []
     others: list[tuple[str, Passage]] = []
     for path in sorted(folder.glob("*.wav")):
-        found = replayed(path, SENSOR, tmp_path_factory.mktemp("roadside"))
+        found = replayed(path, SENSOR, stores)
         left = [passage for passage in found if passage.story is Story.PASSAGE]
         for label in (row for row in labels if row["file"] == path.name):
             direction = Direction.APPROACHING if label["direction"] == "toward" else Direction.RECEDING

@@ -47,12 +47,17 @@ class Room:
 
 @pytest.fixture(scope="module")
 def room(recordings: Path, tmp_path_factory: pytest.TempPathFactory) -> Room:
+    return read_room(recordings, tmp_path_factory.mktemp("room"))
+
+
+def read_room(recordings: Path, stores: Path) -> Room:
+    """All four recordings, each leg with what was logged for most of its time."""
     folder = recordings / "walkers-24ghz"
     labels = read_labels(folder / "labels.csv")
     legs: list[Leg] = []
     n_counted: dict[str, int] = {}
     for path in sorted(folder.glob("*.wav")):
-        logged = replayed(path, SENSOR, tmp_path_factory.mktemp("room"))
+        logged = replayed(path, SENSOR, stores)
         n_counted[path.name] = sum(passage.story is Story.PASSAGE for passage in logged)
         for label in (row for row in labels if row["file"] == path.name):
             started_s, ended_s = float(label["leg_from_s"]), float(label["leg_to_s"])

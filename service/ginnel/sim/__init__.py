@@ -8,7 +8,7 @@ that shared code with the chain would share its mistakes.
 from ginnel.sim.arrivals import WALKING_SPEED_MPS, poisson_walkers
 from ginnel.sim.bodies import BUS, CAR, MOTORCYCLE, VAN, Cyclist, Trolley, Vehicle, Walker
 from ginnel.sim.files import capture_name, write_sigmf, write_truth, write_wav
-from ginnel.sim.motion import Path, constant_speed, loiter, sampled, stop_and_go, turn_back
+from ginnel.sim.motion import Path, constant_speed, loiter, meandering, sampled, stop_and_go, turn_back
 from ginnel.sim.movers import (
     Mover,
     TrueMover,
@@ -25,7 +25,7 @@ from ginnel.sim.movers import (
 from ginnel.sim.nuisance import Clicks, Clutter, Door, Fan, Hum, Lamps, Nuisance, leaves, rain
 from ginnel.sim.receiver import IqError, Receiver
 from ginnel.sim.scene import Scene
-from ginnel.sim.sensor import Beam, Wall
+from ginnel.sim.sensor import Beam, Floor, Mirror, Wall
 
 __all__ = [
     "BUS",
@@ -39,9 +39,11 @@ __all__ = [
     "Cyclist",
     "Door",
     "Fan",
+    "Floor",
     "Hum",
     "IqError",
     "Lamps",
+    "Mirror",
     "Mover",
     "Nuisance",
     "Path",
@@ -59,6 +61,7 @@ __all__ = [
     "leaves",
     "loiter",
     "loiterer",
+    "meandering",
     "poisson_walkers",
     "rain",
     "runner",

@@ -81,10 +81,14 @@ def _joint(points: tuple[tuple[float, float], ...], phase: FloatArray) -> FloatA
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Walker:
-    """A person on foot: torso, head, arms, legs; ``running`` swings further and faster."""
+    """A person on foot: torso, head, arms, legs; ``running`` swings further and faster.
+
+    ``limbs_db`` makes arms and legs stronger: at 5 dB a thigh is as strong as the torso.
+    """
 
     stature_m: float = 1.75
     running: bool = False
+    limbs_db: float = 0.0
 
     def cycle_rate_hz(self, speed_mps: FloatArray) -> FloatArray:
         """Cycles a second; runners keep about 165 steps a minute (common practice, no source)."""
@@ -159,7 +163,7 @@ class Walker:
         above 1.8 times the torso's frequency is about 1 % (there 0.3 to 1.9 %) and that within 0.8 to 1.25
         times about 74 % (there 45 to 70 %: real people also change their pace).
         """
-        side = [0.10, 0.08, 0.35, 0.08, 0.01]
+        side = 10 ** (self.limbs_db / 10) * np.array([0.10, 0.08, 0.35, 0.08, 0.01])
         return np.asarray(np.array([1.0, 0.10, *side, *side])[:, None] * np.ones_like(facing))
 
 

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from ginnel.doppler.kinematics import wavelength_m
 from ginnel.sim.movers import Mover
-from ginnel.sim.sensor import Beam, Wall, echo_paths
+from ginnel.sim.sensor import Beam, Mirror, echo_paths
 from ginnel.words import FloatArray, MoverKind, Sensor
 
 _GRID_HZ = 400.0
@@ -30,7 +30,7 @@ class Hearing:
 
     sensor: Sensor
     beam: Beam
-    walls: tuple[Wall, ...]
+    walls: tuple[Mirror, ...]
     ends_at_sensor: bool
     sample_rate_hz: float
     scale: float  # full scale for a 1 m^2 scatterer at 1 m on the axis
@@ -64,6 +64,12 @@ def _headings(knots_s: FloatArray, velocity_mps: FloatArray) -> FloatArray:
     return np.asarray(np.convolve(np.pad(turns, 2, mode="edge"), np.full(5, 0.2), mode="valid"))
 
 
+def _per_step_db(mover: Mover, n_cycles: float) -> FloatArray:
+    """How strong the whole body is at each step (half a cycle), against its mean."""
+    rng = np.random.default_rng([mover.seed, 0x57E9])
+    return np.asarray(mover.stride_db * rng.standard_normal(int(2 * n_cycles) + 3))
+
+
 class MoverEcho:
     """One mover as heard by one sensor; made when it comes into view, dropped after."""
 
@@ -80,11 +86,13 @@ class MoverEcho:
         self._heading = CubicSpline(knots_s, _headings(knots_s, velocity))
         rng = np.random.default_rng([mover.seed, 0xB0D])
         turns = np.concatenate([[0.0], np.cumsum(0.5 * (rates_hz[1:] + rates_hz[:-1]) * np.diff(knots_s))])
-        self._phase = CubicSpline(knots_s, rng.uniform() + turns)
+        self._first_phase = rng.uniform()
+        self._phase = CubicSpline(knots_s, self._first_phase + turns)
         n_echoes = len(mover.body.powers(np.zeros(1))) * (1 + len(hearing.walls))
         self._flicker_hz = rng.uniform(0.2, 1.5, size=(4, n_echoes, 1))
         self._flicker_turns = rng.uniform(size=(4, n_echoes, 1))
         self._sway_turns = rng.uniform(size=3)
+        self._stride_db = _per_step_db(mover, float(turns[-1]))
         step = hearing.step_samples
         self._weights = lagrange_weights(step)
         grid_hz = hearing.sample_rate_hz / step
@@ -135,7 +143,8 @@ class MoverEcho:
         heading = np.stack([np.cos(turn), np.sin(turn)], axis=-1)
         plan_m = np.maximum(np.hypot(place[:, 0], place[:, 1]), 1e-6)
         facing = -(heading * place).sum(axis=1) / plan_m
-        offsets = mover.body.places_m(self._phase(inside_s), speed)
+        phase = self._phase(inside_s)
+        offsets = mover.body.places_m(phase, speed)
         places = np.empty_like(offsets)
         places[..., 0] = place[:, 0] + offsets[..., 0] * heading[:, 0] - offsets[..., 1] * heading[:, 1]
         places[..., 1] = place[:, 1] + offsets[..., 0] * heading[:, 1] + offsets[..., 1] * heading[:, 0]
@@ -148,6 +157,9 @@ class MoverEcho:
         )
         turns = self._flicker_hz * times_s + self._flicker_turns
         flicker_db = mover.flicker_db / np.sqrt(2) * np.sin(2 * np.pi * turns).sum(axis=0)
+        if mover.stride_db:
+            steps = 2 * (phase - self._first_phase)
+            flicker_db = flicker_db + np.interp(steps, np.arange(len(self._stride_db)), self._stride_db)
         levels = levels * hearing.scale * 10 ** (flicker_db / 20)
         levels *= np.clip(np.minimum(times_s - path.started_s, path.ended_s - times_s) / _FADE_S, 0, 1)
         if hearing.ends_at_sensor:

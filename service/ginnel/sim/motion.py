@@ -119,6 +119,29 @@ def constant_speed(
     return Path(times_s=crossed_s + times_s[inside], x_m=x_m[inside], y_m=np.full(int(inside.sum()), y_m))
 
 
+def meandering(
+    path: Path,
+    *,
+    drift_per_m: float = 0.0,
+    swing_m: float = 0.0,
+    wave_m: float = 12.0,
+    start_turns: float = 0.0,
+) -> Path:
+    """Bend a path sideways: a slant, and a wave along x; how fast x changes stays as it was.
+
+    Parameters
+    ----------
+    drift_per_m : float, metres sideways for each metre along x
+    swing_m, wave_m : float, m, how far the wave goes to either side, and its length along x
+    start_turns : float, where in the wave x = 0 lies; there the path is moved sideways, if at all, by it
+    """
+    n = max(len(path.times_s), 2 + round((path.ended_s - path.started_s) / _KNOT_S))
+    times_s = np.linspace(path.started_s, path.ended_s, n)
+    x_m, y_m = path.spline()(times_s).T
+    bend_m = drift_per_m * x_m + swing_m * np.sin(2 * np.pi * (x_m / wave_m + start_turns))
+    return Path(times_s=times_s, x_m=x_m, y_m=y_m + bend_m)
+
+
 def _from_speeds(started_s: float, x0_m: float, speeds_mps: FloatArray, y_m: float) -> Path:
     """Path from signed speeds at knots, integrated by the trapezium rule."""
     steps = (speeds_mps[1:] + speeds_mps[:-1]) * (_KNOT_S / 2)

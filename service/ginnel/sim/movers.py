@@ -23,7 +23,8 @@ class Mover:
     """A body on a path.
 
     ``power_db`` is the strength of the whole body against its model (1 m^2 torso for people);
-    ``flicker_db`` is the standard deviation of each scatterer's slow fluctuation, drawn from ``seed``.
+    ``flicker_db`` is the standard deviation of each scatterer's slow fluctuation, ``stride_db`` that of the
+    whole body from step to step (half a cycle); both are drawn from ``seed``.
     """
 
     path: Path
@@ -31,6 +32,7 @@ class Mover:
     kind: MoverKind = MoverKind.ON_FOOT
     power_db: float = 0.0
     flicker_db: float = 1.5
+    stride_db: float = 0.0
     seed: int = 0
     name: str = ""
 

@@ -40,7 +40,7 @@ class Receiver:
     ----------
     flicker_corner_hz : below this, noise rises as 1/f over the white noise (0: white only)
     iq : the pair's errors
-    offset : constant offset of both channels, full scale
+    offset, offset_drift : offset of both channels at the start, and what it gains an hour, full scale
     gain_steps : (time s, dB) pairs: the gain changes by so much from then on
     clip_level : the amplifier's rails, full scale
     bits : of the converter; None leaves the samples as they are
@@ -50,6 +50,7 @@ class Receiver:
     flicker_corner_hz: float = 0.0
     iq: IqError = IqError()
     offset: complex = 0.0
+    offset_drift: complex = 0.0
     gain_steps: tuple[tuple[float, float], ...] = ()
     clip_level: float = 1.0
     bits: int | None = 16
@@ -59,7 +60,8 @@ class Receiver:
         """Gain, rails and converter, for real or complex samples."""
         for step_s, step_db in self.gain_steps:
             wave = wave * np.where(times_s >= step_s, 10 ** (step_db / 20), 1.0)
-        wave = wave + (self.offset if np.iscomplexobj(wave) else self.offset.real)
+        offset = self.offset + self.offset_drift * times_s / 3600.0
+        wave = wave + (offset if np.iscomplexobj(wave) else offset.real)
         if not np.iscomplexobj(wave):
             return self._channel(wave, times_s)
         return self._channel(np.real(wave), times_s) + 1j * self._channel(np.imag(wave), times_s)

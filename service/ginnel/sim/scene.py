@@ -30,7 +30,7 @@ from ginnel.sim.echoes import Hearing, Stage
 from ginnel.sim.movers import Mover, TrueMover, true_mover
 from ginnel.sim.nuisance import FRAME_S, Nuisance, Room
 from ginnel.sim.receiver import Receiver, flicker_sections, highpass_sections, streaming
-from ginnel.sim.sensor import Beam, Wall, echo_paths
+from ginnel.sim.sensor import Beam, Mirror, echo_paths
 from ginnel.words import Channels, SampleArray, Sensor
 
 _REFERENCE_NEAREST_M = 1.0  # where somebody would walk into the sensor, the peak means nothing
@@ -51,7 +51,7 @@ class Scene:
     nuisances: tuple[Nuisance, ...] = ()
     receiver: Receiver = field(default_factory=Receiver)
     beam: Beam = field(default_factory=Beam)
-    walls: tuple[Wall, ...] = ()
+    walls: tuple[Mirror, ...] = ()
     ends_at_sensor: bool = False
     peak_snr_db: float = 30.0
     peak_level: float = 0.05

@@ -1,7 +1,7 @@
 """What the sensor hears of a scatterer: beam twice, 1 / R^2 in amplitude, phase 4 pi R / lambda.
 
 Echoes are complex, I + jQ, with approaching as positive frequency; a mono sensor gives the real
-part. A wall adds an image path: out directly and back by way of the wall, or the reverse.
+part. A wall, floor or ceiling adds an image path: out directly and back by way of the wall, or the reverse.
 """
 
 from __future__ import annotations
@@ -13,6 +13,7 @@ import numpy as np
 from ginnel.words import FloatArray, Mounting
 
 DEFAULT_WIDTH_DEG = (80.0, 40.0)
+_RIPPLES = 6
 _NEAREST_M = 0.3  # nothing comes nearer than that: 1 / R^2 has an end
 
 
@@ -22,12 +23,15 @@ class Beam:
 
     ``width_deg`` overrides the mounting's widths, so that a sensor can be configured wrongly.
     ``floor_db`` is the power, one way, that goes in every direction, the back included.
-    ``side_lobes_db`` is how far irregular lobes vary the floor, up and down; ``seed`` draws them.
+    ``side_lobes_db`` is how far irregular lobes vary the floor, up and down; ``ripple_db`` is the standard
+    deviation of a smooth unevenness of the whole pattern, one way, that no data sheet shows; ``seed`` draws
+    both.
     """
 
     width_deg: tuple[float, float] | None = None
     floor_db: float = -20.0
     side_lobes_db: float = 0.0
+    ripple_db: float = 0.0
     seed: int = 0
 
 
@@ -62,7 +66,21 @@ def beam_gain(
             per_deg = rng.uniform(-1, 1, size=2) / 25.0
             wave = share * left * per_deg[0] + share * above * per_deg[1] + rng.uniform()
             floor_db += 0.5 * beam.side_lobes_db * np.sin(2 * np.pi * wave)
-    return np.asarray(lobe + 10 ** (floor_db / 10))
+    gain = lobe + 10 ** (floor_db / 10)
+    if beam.ripple_db:
+        gain *= 10 ** (_ripple_db(beam, share * left, share * above) / 10)
+    return np.asarray(gain)
+
+
+def _ripple_db(beam: Beam, left_deg: FloatArray, above_deg: FloatArray) -> FloatArray:
+    """Waves over the angles, of 15 to 40 degrees each, in directions drawn by the beam's seed."""
+    rng = np.random.default_rng([beam.seed, 0x21BB])
+    total_db = np.zeros_like(left_deg)
+    for _ in range(_RIPPLES):
+        per_deg, turn, start = 1 / rng.uniform(15.0, 40.0), *rng.uniform(0, 2 * np.pi, size=2)
+        along_deg = left_deg * np.cos(turn) + above_deg * np.sin(turn)
+        total_db += np.sin(2 * np.pi * per_deg * along_deg + start)
+    return np.asarray(beam.ripple_db * np.sqrt(2 / _RIPPLES) * total_db)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -72,9 +90,33 @@ class Wall:
     y_m: float
     reflection: float = 0.3
 
+    def image_m(self, y_m: FloatArray, up_m: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Sideways place and height of a scatterer's mirror image."""
+        return 2 * self.y_m - y_m, up_m
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Floor:
+    """A level surface ``up_m`` above the floor: the floor itself, or a ceiling."""
+
+    up_m: float = 0.0
+    reflection: float = 0.3
+
+    def image_m(self, y_m: FloatArray, up_m: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Sideways place and height of a scatterer's mirror image."""
+        return y_m, 2 * self.up_m - up_m
+
+
+#: Anything that gives a second way to the sensor and back.
+Mirror = Wall | Floor
+
 
 def echo_paths(
-    places_m: FloatArray, amplitudes: FloatArray, mounting: Mounting, beam: Beam, walls: tuple[Wall, ...]
+    places_m: FloatArray,
+    amplitudes: FloatArray,
+    mounting: Mounting,
+    beam: Beam,
+    walls: tuple[Mirror, ...],
 ) -> tuple[FloatArray, FloatArray]:
     """Lengths and amplitudes of all paths by which scatterers are heard.
 
@@ -93,9 +135,10 @@ def echo_paths(
     direct_gain = beam_gain(beam, mounting, x, y, up)
     ranges_m, levels = [direct_m], [amplitudes * direct_gain / direct_m**2]
     for wall in walls:
-        image_y = 2 * wall.y_m - y
-        image_m = np.maximum(np.sqrt(x**2 + image_y**2 + up**2), _NEAREST_M)
-        gain = np.sqrt(direct_gain * beam_gain(beam, mounting, x, image_y, up))
+        image_y, image_height = wall.image_m(y, places_m[..., 2])
+        image_up = image_height - mounting.height_m
+        image_m = np.maximum(np.sqrt(x**2 + image_y**2 + image_up**2), _NEAREST_M)
+        gain = np.sqrt(direct_gain * beam_gain(beam, mounting, x, image_y, image_up))
         ranges_m.append(0.5 * (direct_m + image_m))
         # Twice: there by the wall and back directly, and the other way about.
         levels.append(2 * wall.reflection * amplitudes * gain / (direct_m * image_m))
