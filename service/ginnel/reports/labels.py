@@ -108,13 +108,12 @@ def _clock_change_faults(clock: IntArray, count: FloatArray, zone: tzinfo) -> It
             continue
         if not len(rows):
             continue
-        if np.all(count[rows] == 0):
-            reason = "the clock skipped this hour, but a 0 is stored for it"
-        else:
-            reason = "the clock skipped this hour, but it has a count: the labels did not follow the clock"
+        moved = list(_moved(clock, count, at))
+        reason = "the clock skipped this hour, but a 0 is stored for it"
+        if moved or np.any(count[rows] != 0):
+            reason = "the clock skipped this hour, but it has a row: the labels did not follow the clock"
         yield _finding(LabelFault.SKIPPED_HOUR, at, 1, reason)
-        if np.any(count[rows] != 0):
-            yield from _moved(clock, count, at)
+        yield from moved
 
 
 def _moved(clock: IntArray, count: FloatArray, at: int) -> Iterator[LabelFinding]:

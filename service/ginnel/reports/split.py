@@ -58,7 +58,7 @@ def split_counts(
         for way, band, mover in product(*(range(size) for size in n.shape[1:]))
         if n[:, way].any() or ways[way] is not Direction.UNKNOWN
         if n[:, :, band].any() or not by_band or labels[band]
-        if n[:, :, :, mover].any() or (mover == len(movers) - 1 and not n.any())
+        if n[:, :, :, mover].any() or not by_mover or (not movers[mover] and not n.any())
     }
     return parts
 

@@ -49,14 +49,16 @@ def number_inside(entered: FloatArray, left: FloatArray, error: DoorError) -> tu
 
     Returns
     -------
-    net, variance : arrays of that shape; net is unbiased for entries less exits
+    net, variance : arrays of that shape; net is true entries less true exits
 
     Notes
     -----
     Of true entries a share r_in (1 - p) is counted as such and r_in p as exits, with recall r and
-    direction error p; of exits likewise. Solved for the true numbers, net = a entered - b left with
-    a = ((1 - p) / r_in + p / r_out) / (1 - 2 p) and b the same with in and out swapped. One true entry
-    adds r_in ((1 - p) a^2 + p b^2) - 1 to the variance, one true exit r_out ((1 - p) b^2 + p a^2) - 1.
+    direction error p; of exits likewise. Solved for the true numbers, of those seen
+    ((1 - p) entered - p left) / (1 - 2 p) went in (not less than none, not more than all) and the others
+    out; over r_in and r_out. So net = a entered - b left with a = ((1 - p) / r_in + p / r_out) / (1 - 2 p)
+    and b the same with in and out swapped. One true entry adds r_in ((1 - p) a^2 + p b^2) - 1 to the
+    variance, one true exit r_out ((1 - p) b^2 + p a^2) - 1.
     Recalls that are themselves off by a standard error s add (s E / r_in)^2 + (s X / r_out)^2, which
     grows with the square of the flow. Derived here; checked by simulation.
 
@@ -67,9 +69,10 @@ def number_inside(entered: FloatArray, left: FloatArray, error: DoorError) -> tu
     entered, left = np.asarray(entered, float), np.asarray(left, float)
     a = ((1 - p) / r_in + p / r_out) / (1 - 2 * p)
     b = (p / r_in + (1 - p) / r_out) / (1 - 2 * p)
-    true_in = np.maximum((1 - p) * entered - p * left, 0) / (1 - 2 * p) / r_in
-    true_out = np.maximum((1 - p) * left - p * entered, 0) / (1 - 2 * p) / r_out
+    seen = entered + left
+    seen_in = np.clip(((1 - p) * entered - p * left) / (1 - 2 * p), 0, seen)
+    true_in, true_out = seen_in / r_in, (seen - seen_in) / r_out
     variance = true_in * (r_in * ((1 - p) * a**2 + p * b**2) - 1)
     variance += true_out * (r_out * ((1 - p) * b**2 + p * a**2) - 1)
     variance += (error.recall_se * true_in / r_in) ** 2 + (error.recall_se * true_out / r_out) ** 2
-    return a * entered - b * left, variance
+    return true_in - true_out, variance
