@@ -77,10 +77,13 @@ def test_a_day_of_23_hours_is_drawn_23_hours_long_with_the_wall_clock_beneath(cl
 
 def test_a_week_has_a_map_of_its_hours(client: FlaskClient) -> None:
     chart = charts_of(client, "/charts/busy.json?sensor=corridor&show=week&on=2026-03-02")["week"]
-    (source,) = [model for model in chart.models if isinstance(model, ColumnDataSource)]
+    sources = [model for model in chart.models if isinstance(model, ColumnDataSource)]
+    (source,) = [one for one in sources if "rate" in one.data]
     cells = dict(zip(source.data["when"], source.data["rate"], strict=True))
     # three in the one hour heard; three in the half hour heard
     assert cells == {"Monday 08:00": 3.0, "Monday 09:00": 2.0, "Monday 11:00": 6.0}
+    (unheard,) = [one for one in sources if "rate" not in one.data]
+    assert len(unheard.data["hour"]) == 7 * 24 - 3, "all others are hatched"
 
 
 def test_a_day_without_speeds_has_no_speed_chart(client: FlaskClient) -> None:

@@ -17,6 +17,7 @@ from ginnel.web.access.headers import harden
 from ginnel.web.assets import asset_url, assets
 from ginnel.web.charts import charts
 from ginnel.web.files import files
+from ginnel.web.health import health
 from ginnel.web.pages import pages
 
 if TYPE_CHECKING:
@@ -55,7 +56,7 @@ def create_app(settings: Settings) -> Flask:
     problems.register(app)
     behind_tls = (web.public_url or "").startswith("https:")
     gate.register(app, store, local_only=local_only, behind_tls=behind_tls)
-    for blueprint in (assets, charts, files, pages):
+    for blueprint in (assets, charts, files, health, pages):
         app.register_blueprint(blueprint)
     in_order = DefaultJSONProvider(app)
     in_order.sort_keys = False  # in a chart's document, what is referred to must come first

@@ -74,6 +74,31 @@ def download(kind: str, form: str) -> flask.Response:
     return answer
 
 
+@files.get("/summary.<form>")
+def summary(form: str) -> flask.Response:
+    """Give the page to print of one view."""
+    from ginnel.export.summary import summaries
+    from ginnel.export.summary_pages import summary_html, summary_pdf
+
+    if form not in summary_forms():
+        flask.abort(404)
+    asked = ask()
+    view = asked.view()
+    names = (view.sensor.name,)
+    pages = summaries(asked.store, Question(sensors=names, start_us=view.start_us, end_us=view.end_us))
+    if not pages:
+        flask.abort(404, "Nothing was logged in this time.")
+    data = summary_pdf(pages) if form == "pdf" else summary_html(pages).encode()
+    answer = flask.Response(data, mimetype="application/pdf" if form == "pdf" else "text/html")
+    answer.headers.set("Content-Disposition", "attachment", filename=_name("summary", form, view))
+    return answer
+
+
+def summary_forms() -> list[str]:
+    """Kinds of pages to print that can be made here."""
+    return ["html", *(["pdf"] if find_spec("fpdf") else [])]
+
+
 def _name(kind: str, form: str, view: View) -> str:
     days = view.first.isoformat() if view.n_days == 1 else f"{view.first}_{view.last}"
     return secure_filename(f"{view.sensor.name}-{kind}-{days}.{form}")

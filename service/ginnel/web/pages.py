@@ -13,7 +13,7 @@ from ginnel.web.answers import full as full_answer
 from ginnel.web.answers import now as now_answer
 from ginnel.web.answers import single as single_answer
 from ginnel.web.answers import trust as trust_answer
-from ginnel.web.asked import ask, show
+from ginnel.web.asked import address, ask, show
 from ginnel.web.wording import PER_MPS, interval_name
 from ginnel.words import Passage, Story
 
@@ -126,8 +126,20 @@ def trust() -> str:
 def take() -> str:
     """Offer files to take away."""
     asked = ask()
+    view = asked.view()
     return show(
-        "take.html", questions.TAKE, asked, asked.view(), kinds=files.kinds(), formats=files.formats()
+        "take.html",
+        questions.TAKE,
+        asked,
+        view,
+        kinds=files.kinds(),
+        formats=files.formats(),
+        summary_forms=files.summary_forms(),
+        links=[
+            (one.name, address(one.endpoint, view.query))
+            for one in questions.QUESTIONS
+            if one not in (questions.NOW, questions.TAKE)
+        ],
     )
 
 

@@ -107,7 +107,7 @@ class Wording:
                 return self.day(view.first)
             case Show.WEEK:
                 year, week, _ = view.first.isocalendar()
-                return f"Week {week} of {year}"
+                return f"Week {week} of {year}, {self.days(view.first, view.last)}"
             case Show.MONTH:
                 return self._skeleton("yMMMM", view.first)
             case Show.YEAR:
@@ -120,6 +120,8 @@ class Wording:
         if first == last:
             return self.day(first)
         begin = self.day(first, weekday=False, year=first.year != last.year)
+        if (first.year, first.month) == (last.year, last.month) and begin.startswith(str(first.day)):
+            begin = str(first.day)
         return f"{begin} to {self.day(last, weekday=False)}"
 
     def duration(self, seconds: float) -> str:

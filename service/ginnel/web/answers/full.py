@@ -33,9 +33,9 @@ class Inside:
         return max(known, key=lambda row: row.inside or 0.0, default=None)
 
     @property
-    def cautions(self) -> tuple[str, ...]:
-        """Why not to trust it, each reason once."""
-        return tuple(dict.fromkeys(row.caution for row in self.rows if row.caution))
+    def caution(self) -> str:
+        """Why not to trust it at its end, where the doubt is largest; empty: nothing against it."""
+        return self.rows[-1].caution if self.rows else ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -105,6 +105,19 @@ def heat(week: TypicalWeek, wording: Wording, scheme: Scheme) -> figure:
         line_color=None,
         fill_color={"field": "rate", "transform": colours},
     )
+    plot.rect(
+        x="hour",
+        y="day",
+        width=0.94,
+        height=0.9,
+        source=ColumnDataSource({"hour": (hours.ravel() + 0.5)[~known], "day": (6.5 - days.ravel())[~known]}),
+        line_color=None,
+        fill_color=None,
+        hatch_pattern="right_diagonal_line",
+        hatch_color=scheme.faint,
+        hatch_scale=9,
+        hatch_weight=1,
+    )
     plot.add_tools(
         hover([("", "@when"), ("passages an hour", "@text"), ("hours listened", "@heard")], [cells])
     )

@@ -175,7 +175,7 @@ def _mark(
             x=value_mps * scale,
             y=highest,
             x_offset=4,
-            y_offset=-4,
+            y_offset=-4 if percent in (15, 85) else -20,
             text=f"{percent} %",
             text_color=scheme.ink,
             text_baseline="top",

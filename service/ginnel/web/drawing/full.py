@@ -10,7 +10,7 @@ from bokeh.plotting import figure
 from ginnel.reports import InsideRow
 from ginnel.web.answers.full import Full
 from ginnel.web.drawing.along import hours_in, plot_along
-from ginnel.web.drawing.scheme import Scheme, dressed, hatch, hover, ticks
+from ginnel.web.drawing.scheme import Scheme, dressed, hatch, hover, share_ticks, ticks
 from ginnel.web.wording import Wording, interval_name
 
 
@@ -52,9 +52,7 @@ def occupied(full: Full, wording: Wording, scheme: Scheme) -> figure:
         line_color=scheme.paper,
     )
     plot.add_tools(hover([("", "@when"), ("somebody there", "@text"), ("listened", "@listened")], [bars]))
-    marks = [top * part / 4 for part in range(5)] if top else [0.0]
-    plot.yaxis.ticker = marks
-    plot.yaxis.major_label_overrides = {mark: wording.share(mark, 1) for mark in marks}
+    share_ticks(plot, max(min(top * 1.15, 1.0), 0.01), wording.share)
     return dressed(plot, scheme)
 
 

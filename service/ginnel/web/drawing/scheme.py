@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -112,7 +113,7 @@ def dressed(plot: figure, scheme: Scheme) -> figure:
     if not plot.legend:
         return plot
     plot.legend.click_policy = "hide"
-    plot.legend.orientation = "horizontal"
+    plot.legend.ncols = 2  # side by side they would stick out of a phone
     plot.legend.background_fill_color = plot.legend.border_line_color = None
     plot.legend.label_text_color = scheme.ink
     plot.legend.label_text_font = FONT
@@ -166,6 +167,14 @@ def ticks(plot: figure, low: float, high: float, text: Any) -> None:
     marks = [step * i for i in range(first, last + 1) if low <= step * i <= high]
     plot.yaxis.ticker = FixedTicker(ticks=marks)
     plot.yaxis.major_label_overrides = {mark: text(abs(mark)) for mark in marks}
+
+
+def share_ticks(plot: figure, top: float, text: Callable[[float, int], str]) -> None:
+    """Label the upright axis with round shares from nothing to the top."""
+    thousandth = step_to(max(1000 * top, 1.0)) / 1000
+    marks = [thousandth * i for i in range(int(top / thousandth) + 1)]
+    plot.yaxis.ticker = FixedTicker(ticks=marks)
+    plot.yaxis.major_label_overrides = {mark: text(mark, 0 if thousandth >= 0.01 else 1) for mark in marks}
 
 
 def step_to(top: float) -> int:
