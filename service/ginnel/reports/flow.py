@@ -11,10 +11,12 @@ from datetime import timedelta, tzinfo
 import numpy as np
 
 from ginnel import store as log
+from ginnel.reports.calendar import calendar
 from ginnel.reports.intervals import Every, cut
 from ginnel.reports.parts import spans_us
 from ginnel.stats import poisson_limits, union_us_in
 from ginnel.stats.counts import IntArray
+from ginnel.stats.unusual import middle_and_spread
 from ginnel.store import Store
 from ginnel.times import from_us, to_us
 from ginnel.words import US_PER_S, Direction, FloatArray
@@ -23,7 +25,6 @@ USUAL_WEEKS = 8
 LEAST_ALIKE = 4
 #: An interval that was listened to less than this says little about what is usual.
 ENOUGH_COVERAGE = 0.9
-_MAD_TO_SD = 1.4826  # 1 / the upper quartile of the normal distribution
 _HOURS_A_WEEK = 7 * 24
 _TWO_WAYS = (Direction.APPROACHING, Direction.RECEDING)
 
@@ -125,9 +126,7 @@ def usual(
 
     Notes
     -----
-    On square roots, where a Poisson count has a standard deviation of 1/2 whatever its mean (M. S.
-    Bartlett, J. R. Stat. Soc. Suppl. 3, 1936): median, and to both sides twice the larger of 1/2 and
-    1.4826 times the median absolute deviation (F. R. Hampel, J. Am. Stat. Assoc. 69, 1974).
+    Median and twice the spread to both sides, on square roots: see `middle_and_spread`.
     """
     if every not in (Every.HOUR, Every.DAY) or len(edges_us) < 2:
         nothing = np.full(max(len(edges_us) - 1, 0), np.nan)
@@ -137,9 +136,7 @@ def usual(
     group, wanted = _group(past.edges_us, every, zone), _group(edges_us, every, zone)
     enough = past.coverage >= ENOUGH_COVERAGE
     counts = {way: past.counts[way] for way in _TWO_WAYS} | {None: past.both}
-    return {
-        way: _usual(np.where(enough, np.sqrt(count), np.nan), group, wanted) for way, count in counts.items()
-    }
+    return {way: _usual(np.where(enough, count, np.nan), group, wanted) for way, count in counts.items()}
 
 
 def typical_week(store: Store, sensor: str, start_us: int, end_us: int, zone: tzinfo) -> TypicalWeek:
@@ -152,13 +149,12 @@ def typical_week(store: Store, sensor: str, start_us: int, end_us: int, zone: tz
     return TypicalWeek(rate=rate.reshape(7, 24), listened_h=listened_h.reshape(7, 24))
 
 
-def _usual(root: FloatArray, group: IntArray, wanted: IntArray) -> Usual:
+def _usual(counts: FloatArray, group: IntArray, wanted: IntArray) -> Usual:
     middle, spread = np.full(_HOURS_A_WEEK, np.nan), np.full(_HOURS_A_WEEK, np.nan)
     for one in np.unique(wanted):
-        alike = root[(group == one) & np.isfinite(root)]
+        alike = counts[(group == one) & np.isfinite(counts)]
         if len(alike) >= LEAST_ALIKE:
-            middle[one] = np.median(alike)
-            spread[one] = max(_MAD_TO_SD * float(np.median(np.abs(alike - middle[one]))), 0.5)
+            middle[one], spread[one] = middle_and_spread(alike)
     return Usual(
         median=middle[wanted] ** 2,
         low=np.maximum(middle - 2 * spread, 0.0)[wanted] ** 2,
@@ -168,10 +164,8 @@ def _usual(root: FloatArray, group: IntArray, wanted: IntArray) -> Usual:
 
 def _group(edges_us: IntArray, every: Every, zone: tzinfo) -> IntArray:
     """Number of the hour in the week, or of the weekday, in which each interval begins."""
-    starts = (from_us(int(edge), zone) for edge in edges_us[:-1])
-    if every is Every.DAY:
-        return np.fromiter((start.weekday() for start in starts), np.int64)
-    return np.fromiter((24 * start.weekday() + start.hour for start in starts), np.int64)
+    local = calendar(edges_us[:-1], zone)
+    return local.weekday if every is Every.DAY else 24 * local.weekday + local.hour
 
 
 def _summed(hour_us: IntArray, values: IntArray, edges_us: IntArray) -> IntArray:

@@ -13,7 +13,7 @@ from ginnel.reports.cells import iter_cells
 from ginnel.reports.intervals import Every, period
 from ginnel.reports.parts import chosen_sensors
 from ginnel.reports.speed_profile import speed_rollups, summary_of
-from ginnel.stats import SpeedSummary, band_counts, summarise_speeds
+from ginnel.stats import Pace, SpeedSummary, band_counts, pace, share_over, summarise_speeds
 from ginnel.stats.counts import IntArray
 from ginnel.store import Rollup, Store
 from ginnel.words import Direction
@@ -30,6 +30,8 @@ class SpeedRow:
     summary: SpeedSummary | None  # None: never listened
     bands: tuple[int, ...] | None  # passages in each band of the sensor, slowest first
     is_grouped: bool = False  # percentiles and bands come from classes of 1 cm/s: passages are gone
+    pace: Pace | None = None  # where a width was asked for
+    over_limit: float | None = None  # share of measured speeds above the limit asked for
 
 
 def speeds(
@@ -41,9 +43,22 @@ def speeds(
     tz: str | None = None,
     *,
     together: bool = False,
+    pace_width_mps: float | None = None,
+    limit_mps: float | None = None,
 ) -> tuple[SpeedRow, ...]:
     """Summarise speeds by interval and direction: see `iter_speeds`."""
-    return tuple(iter_speeds(store, sensors, start_us, end_us, every, tz, together=together))
+    rows = iter_speeds(
+        store,
+        sensors,
+        start_us,
+        end_us,
+        every,
+        tz,
+        together=together,
+        pace_width_mps=pace_width_mps,
+        limit_mps=limit_mps,
+    )
+    return tuple(rows)
 
 
 def iter_speeds(
@@ -55,6 +70,8 @@ def iter_speeds(
     tz: str | None = None,
     *,
     together: bool = False,
+    pace_width_mps: float | None = None,
+    limit_mps: float | None = None,
 ) -> Iterator[SpeedRow]:
     """Summarise speeds by sensor, interval and direction, in this order; rows as in `iter_counts`.
 
@@ -88,6 +105,8 @@ def iter_speeds(
                 summary=None if cell.count is None else summary,
                 bands=None if cell.count is None else tuple(band_counts(speed_mps, bands[sensor]).tolist()),
                 is_grouped=is_grouped,
+                pace=None if pace_width_mps is None else pace(speed_mps, pace_width_mps),
+                over_limit=None if limit_mps is None else share_over(speed_mps, limit_mps),
             )
 
 

@@ -51,24 +51,37 @@ def against_history(counts: FloatArray, group: IntArray, n_groups: int, least: i
 
     Notes
     -----
-    On square roots, where a Poisson count has a standard deviation of 1/2 whatever its mean (M. S. Bartlett,
-    J. R. Stat. Soc. Suppl. 3, 1936): (root - median) / max(1.4826 MAD, 1/2), with the median absolute
-    deviation MAD (F. R. Hampel, J. Am. Stat. Assoc. 69, 1974). So one odd hour neither shifts nor widens
-    what is usual.
+    (root - middle) / spread on square roots: see `middle_and_spread`.
     """
     median = np.full(len(counts), np.nan)
     surprise = np.full(len(counts), np.nan)
-    root = np.sqrt(counts)
     known = np.isfinite(counts)
     for one in range(n_groups):
         own = np.flatnonzero(known & (group == one))
         if len(own) < least:
             continue
-        middle = np.median(root[own])
-        spread = max(_MAD_TO_SD * float(np.median(np.abs(root[own] - middle))), 0.5)
+        middle, spread = middle_and_spread(counts[own])
         median[own] = middle**2
-        surprise[own] = (root[own] - middle) / spread
+        surprise[own] = (np.sqrt(counts[own]) - middle) / spread
     return History(median=median, surprise=surprise)
+
+
+def middle_and_spread(counts: FloatArray) -> tuple[float, float]:
+    """Median and standard deviation of the square roots of like counts, robust against odd ones among them.
+
+    Parameters
+    ----------
+    counts : array, shape (n,), n > 0, no NaN
+
+    Notes
+    -----
+    On square roots a Poisson count has a standard deviation of 1/2 whatever its mean (M. S. Bartlett, J. R.
+    Stat. Soc. Suppl. 3, 1936). The spread is 1.4826 times the median absolute deviation (F. R. Hampel, J. Am.
+    Stat. Assoc. 69, 1974), and at least this 1/2. So one odd hour neither shifts nor widens what is usual.
+    """
+    root = np.sqrt(counts)
+    middle = float(np.median(root))
+    return middle, max(_MAD_TO_SD * float(np.median(np.abs(root - middle))), 0.5)
 
 
 def usual_but_for_silence(counts: FloatArray, group: IntArray, n_groups: int, long: int = 24) -> FloatArray:

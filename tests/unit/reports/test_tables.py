@@ -200,6 +200,18 @@ def test_speeds_together(filled: Store) -> None:
     assert row.summary.mean_mps == pytest.approx(1.25)
 
 
+def test_pace_and_share_over_a_limit_where_they_are_asked_for(filled: Store) -> None:
+    first, receding, *_, blank, _ = speeds(
+        filled, ["north"], NINE, NINE + 3 * HOUR, pace_width_mps=0.5, limit_mps=1.5
+    )
+    assert first.pace is not None
+    assert (first.pace.low_mps, first.pace.n, first.pace.share) == (1.0, 1, 0.5)
+    assert first.over_limit == 0.5
+    assert (receding.pace, receding.over_limit) == (None, None)  # no speed was measured
+    assert (blank.pace, blank.over_limit, blank.summary) == (None, None, None)
+    assert speeds(filled, ["north"])[0].pace is None
+
+
 def test_entries_carry_a_lasting_name_and_the_sensors_own_band(filled: Store) -> None:
     entries = list(iter_entries(filled))
     assert [entry.passage_id for entry in entries[:2]] == [f"north-{NINE}", f"north-{NINE + HOUR // 10}"]
