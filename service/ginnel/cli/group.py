@@ -23,6 +23,7 @@ COMMANDS = {
     "replay": "Find the passages in recorded captures and log them.",
     "serve": "Show the dashboard.",
     "simulate": "Make captures with known truth.",
+    "status": "Say whether it is listening, and what is wrong.",
     "store": "Look after the log on disk.",
     "users": "Say who may see the dashboard.",
 }

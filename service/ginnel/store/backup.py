@@ -182,7 +182,8 @@ def _dump_postgresql(url: URL, target: Path) -> None:
 
 def _plain(url: URL) -> str:
     """URL as PostgreSQL's own programs take it, without the password."""
-    bare = url.set(drivername="postgresql", password=None).difference_update_query(["options"])
+    # `set` would take None for no change
+    bare = url.set(drivername="postgresql")._replace(password=None).difference_update_query(["options"])
     return bare.render_as_string(hide_password=False)
 
 
