@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import ctypes
-import ctypes.util
 import time
 from dataclasses import dataclass
 from threading import Event
@@ -48,8 +47,7 @@ class SystemClock:
 
     def __init__(self, *, is_always_set: bool = False) -> None:
         self._is_always_set = is_always_set
-        name = ctypes.util.find_library("c")
-        self._libc = None if is_always_set else ctypes.CDLL(name or "libc.so.6", use_errno=True)
+        self._libc = None if is_always_set else ctypes.CDLL(None)
 
     def read(self) -> ClockReading:
         """Read all clocks at once."""

@@ -12,6 +12,7 @@ from types import FrameType
 
 from ginnel.clock import Clock, SystemClock
 from ginnel.config import SensorSettings, Settings, load_settings
+from ginnel.daemon.jobs import start_jobs
 from ginnel.daemon.listener import Listener
 from ginnel.daemon.notify import notify, watchdog_s
 from ginnel.daemon.outbox import Outbox
@@ -72,6 +73,13 @@ class Daemon:
             writer.start()
             for listener in self._listeners:
                 listener.start()
+            jobs = start_jobs(
+                lambda: self._settings,
+                self._clock,
+                lambda: [listener.gauge for listener in self._listeners],
+                lambda: outbox.fault,
+            )
+            stack.callback(jobs.close)
             notify("READY=1", "STATUS=listening")
             log.info("listening to %s", ", ".join(listener.name for listener in self._listeners))
             try:
