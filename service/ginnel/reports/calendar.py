@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from datetime import tzinfo
+from datetime import date, tzinfo
 
 import numpy as np
 
+from ginnel.reports.intervals import DAY_US, offset_changes, offset_us
 from ginnel.stats.counts import IntArray
-from ginnel.times import from_us
+
+_HOUR_US = DAY_US // 24
+_EPOCH = date(1970, 1, 1).toordinal()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -24,9 +27,23 @@ class Calendar:
 
 def calendar(starts_us: IntArray, zone: tzinfo) -> Calendar:
     """Look up when some moments are in a zone."""
-    local = [from_us(start_us, zone) for start_us in starts_us.tolist()]
-    fields = np.array(
-        [(at.year, at.month, at.weekday(), at.hour, at.toordinal()) for at in local], np.int64
-    ).reshape(-1, 5)
-    year, month, weekday, hour, day = np.ascontiguousarray(fields.T)
-    return Calendar(year=year, month=month, weekday=weekday, hour=hour, day=day)
+    local_us = starts_us + _offsets_us(starts_us, zone)
+    days = local_us // DAY_US  # since 1970-01-01, a Thursday
+    months = days.astype("datetime64[D]").astype("datetime64[M]").astype(np.int64)
+    return Calendar(
+        year=1970 + months // 12,
+        month=1 + months % 12,
+        weekday=(days + 3) % 7,
+        hour=(local_us % DAY_US) // _HOUR_US,
+        day=days + _EPOCH,
+    )
+
+
+def _offsets_us(starts_us: IntArray, zone: tzinfo) -> IntArray:
+    """How far the zone's clock is ahead of UTC at each moment."""
+    if not len(starts_us):
+        return np.zeros(0, np.int64)
+    first_us, last_us = int(starts_us.min()), int(starts_us.max()) + 1
+    changes = offset_changes(first_us, last_us, zone)
+    ahead_us = np.array([offset_us(moment, zone) for moment in (first_us, *changes)], np.int64)
+    return ahead_us[np.searchsorted(np.array(changes, np.int64), starts_us, side="right")]
