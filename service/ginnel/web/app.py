@@ -14,6 +14,7 @@ from ginnel.store import open_store
 from ginnel.web import problems
 from ginnel.web.access import gate
 from ginnel.web.access.headers import harden
+from ginnel.web.api.routes import api
 from ginnel.web.assets import asset_url, assets
 from ginnel.web.charts import charts
 from ginnel.web.files import files
@@ -49,6 +50,7 @@ def create_app(settings: Settings) -> Flask:
         "application/problem+json",
         "text/csv",
     ]
+    app.config["COMPRESS_ALGORITHM"] = ["br", "gzip"]
     store = open_store(settings.store.url, read_only=True)
     app.extensions["ginnel.store"], app.extensions["ginnel.settings"] = store, settings
     Compress(app)
@@ -56,7 +58,7 @@ def create_app(settings: Settings) -> Flask:
     problems.register(app)
     behind_tls = (web.public_url or "").startswith("https:")
     gate.register(app, store, local_only=local_only, behind_tls=behind_tls)
-    for blueprint in (assets, charts, files, health, pages):
+    for blueprint in (api, assets, charts, files, health, pages):
         app.register_blueprint(blueprint)
     in_order = DefaultJSONProvider(app)
     in_order.sort_keys = False  # in a chart's document, what is referred to must come first
