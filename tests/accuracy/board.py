@@ -83,7 +83,7 @@ def false_rate(outcome: Outcome, per_day: float | None) -> Verdict:
     hours = outcome.listened_s / 3600.0
     n = len(outcome.false_s)
     text = f"{n / hours:.2f} ({hours:.1f})" if hours else ""
-    if per_day is None:
+    if per_day is None or not hours:
         return Verdict(text=text)
     met = n / hours * 24.0 <= per_day
     return Verdict(
@@ -100,7 +100,7 @@ def verdicts(row: Row, outcome: Outcome) -> list[Verdict]:
     also = []
     if outcome.n_others:
         also.append(share_below(outcome.n_others_counted, outcome.n_others, goals.counted_share))
-    if goals.is_day:
+    if goals.is_day and outcome.quarters:
         also += day_verdicts(outcome)
     if outcome.n_unsettled:
         also.append(Verdict(text=f"{outcome.n_unsettled} flagged unsettled"))

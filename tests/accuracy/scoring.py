@@ -8,7 +8,6 @@ two people who cross each other at one moment each is paired with the passage of
 
 from __future__ import annotations
 
-import time
 from collections.abc import Iterator
 from dataclasses import dataclass
 
@@ -62,7 +61,6 @@ class Outcome:
     n_others_counted: int = 0
     n_unsettled: int = 0
     listened_s: float = 0.0
-    took_s: float = 0.0
     quarters: tuple[tuple[int, int], ...] = ()
     true_ways: tuple[Direction, ...] = ()
     found_ways: tuple[Direction, ...] = ()
@@ -100,33 +98,30 @@ class Outcome:
 def find(case: Case) -> list[Passage]:
     """What the chain makes of a case, told the sensor as it is believed to be. A chain a span."""
     found: list[Passage] = []
-    for begin_s, end_s, blocks in _spans(case):
+    for begin_s, blocks in _spans(case):
         chain = Chain(case.told, case.scene.sample_rate_hz, round(begin_s * US_PER_S))
-        assert end_s > begin_s
         for block in blocks:
             found += chain.push(block)
         found += chain.finish()
     return found
 
 
-def _spans(case: Case) -> Iterator[tuple[float, float, Iterator[SampleArray]]]:
+def _spans(case: Case) -> Iterator[tuple[float, Iterator[SampleArray]]]:
     if not case.holes_s:
-        yield 0.0, case.scene.duration_s, case.scene.blocks(_BLOCK_SAMPLES)
+        yield 0.0, case.scene.blocks(_BLOCK_SAMPLES)
         return
     samples = case.scene.samples()
     for begin_s, end_s in case.spans_s:
         first, last = (round(at_s * case.scene.sample_rate_hz) for at_s in (begin_s, end_s))
-        yield begin_s, end_s, iter((samples[first:last],))
+        yield begin_s, iter((samples[first:last],))
 
 
 def score(case: Case) -> Outcome:
     """Find the passages of a case and compare them with its truth."""
-    started = time.perf_counter()
-    found = find(case)
-    return compare(case, found, time.perf_counter() - started)
+    return compare(case, find(case))
 
 
-def compare(case: Case, found: list[Passage], took_s: float = 0.0) -> Outcome:
+def compare(case: Case, found: list[Passage]) -> Outcome:
     """Compare what was found in a case with its truth."""
     scene = case.scene
     told = [
@@ -144,7 +139,7 @@ def compare(case: Case, found: list[Passage], took_s: float = 0.0) -> Outcome:
         [true.direction for _, true in passed],
         [one.direction for one in counted],
     )
-    pairs, missed_s, free_s = [], [], []
+    pairs, missed_s = [], []
     for number, (mover, true) in enumerate(passed):
         at = partner.get(number)
         if not _is_scored(case, true):
@@ -177,7 +172,6 @@ def compare(case: Case, found: list[Passage], took_s: float = 0.0) -> Outcome:
         ),
         n_unsettled=sum(Flag.UNSETTLED in pair.found.flags for pair in pairs),
         listened_s=sum(end_s - begin_s for begin_s, end_s in case.spans_s) - case.learnt_s,
-        took_s=took_s,
         quarters=_quarters(case, crossed_s, found_s),
         true_ways=tuple(true.direction for _, true in passed if _is_scored(case, true)),
         found_ways=tuple(one.direction for one in late if one.direction is not Direction.UNKNOWN),

@@ -88,3 +88,10 @@ def test_a_vehicle_shows_the_face_that_looks_at_the_sensor() -> None:
     assert rear[1] == pytest.approx(10.0)
     assert front[1] < 0.02
     assert rear[0] < 0.02
+
+
+def test_limbs_can_be_as_strong_as_the_torso() -> None:
+    """The thigh's share is 0.35: 10 log10(1 / 0.35) = 4.56 dB. Torso and head stay as they are."""
+    powers = Walker(limbs_db=4.56).powers(np.zeros(1))[:, 0]
+    assert powers[[4, 9]] == pytest.approx([1.0, 1.0], abs=1e-3)
+    assert powers[:2] == pytest.approx([1.0, 0.1])

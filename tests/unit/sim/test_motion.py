@@ -12,7 +12,17 @@ from pathlib import Path as FilePath
 import numpy as np
 import pytest
 
-from ginnel.sim import Path, Scene, constant_speed, follow, poisson_walkers, sampled, stop_and_go, turn_back
+from ginnel.sim import (
+    Path,
+    Scene,
+    constant_speed,
+    follow,
+    meandering,
+    poisson_walkers,
+    sampled,
+    stop_and_go,
+    turn_back,
+)
 from ginnel.words import Direction, Sensor, Story
 
 WALKS = FilePath(
@@ -107,3 +117,14 @@ def test_real_walks_cross_25_each_way() -> None:
     assert [true.story for true in truth] == [Story.PASSAGE] * 50
     assert [true.direction for true in truth] == [Direction.APPROACHING] * 25 + [Direction.RECEDING] * 25
     assert all(0.8 < true.mean_speed_mps < 2.5 for true in truth)
+
+
+def test_a_meander_bends_the_way_and_keeps_the_pace() -> None:
+    straight = constant_speed(crossed_s=20.0, speed_mps=1.5, direction=Direction.APPROACHING, y_m=0.2)
+    bent = meandering(straight, drift_per_m=0.1, swing_m=0.3, wave_m=8.0)
+    times_s = np.linspace(bent.started_s, bent.ended_s, 200)
+    assert bent.crossings_s() == pytest.approx([20.0])
+    x_m, y_m = bent.spline()(times_s).T
+    assert x_m == pytest.approx(straight.spline()(times_s)[:, 0], abs=1e-6)
+    # x = 10: a metre of drift, and a wave and a quarter of it: 0.2 + 1.0 + 0.3.
+    assert float(np.interp(10.0, x_m[::-1], y_m[::-1])) == pytest.approx(1.5, abs=1e-3)

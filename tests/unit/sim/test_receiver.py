@@ -67,3 +67,9 @@ def test_gain_steps_offsets_and_dead_input_show() -> None:
     assert 20 * np.log10(seconds[2].std() / seconds[1].std()) == pytest.approx(6.0, abs=0.2)
     assert not seconds[4].any()
     assert seconds[0].mean() == pytest.approx(0.01 - 0.02j, abs=2e-3)
+
+
+def test_an_offset_drifts_by_the_hour() -> None:
+    receiver = Receiver(bits=None, offset=0.1 + 0.2j, offset_drift=0.2 - 0.1j)
+    after = receiver.convert(np.zeros(2, dtype=complex), np.array([0.0, 1800.0]))
+    assert after == pytest.approx(np.array([0.1 + 0.2j, 0.2 + 0.15j]))

@@ -21,6 +21,8 @@ from ginnel.sim import (
     vehicle,
     walker,
 )
+from ginnel.sim.bodies import cycle_s
+from ginnel.sim.echoes import MoverEcho
 from ginnel.words import Channels, Direction, FloatArray, Mounting, Sensor, Story
 
 CORRIDOR = Mounting(tilt_deg=15.0)
@@ -189,3 +191,20 @@ def test_bad_scenes_are_refused() -> None:
         Scene(sensor=sensor(), duration_s=0)
     with pytest.raises(ValueError, match="block_samples"):
         next(Scene(sensor=sensor(), duration_s=1).blocks(0))
+
+
+def test_a_body_that_changes_from_step_to_step_does_so_by_its_standard_deviation() -> None:
+    """Levels of one walker who differs in nothing else, at the middle of each step; and in any blocks."""
+    steady = replace(walker(crossed_s=300.0, speed_mps=1.34, far_m=390.0), flicker_db=0.0)
+    lively = replace(steady, stride_db=2.0)
+    hearing = Scene(sensor=sensor(), duration_s=1.0).hearing()
+    half_cycle_s = cycle_s(1.34) / 2
+    times_s = np.arange(20.0, 290.0, half_cycle_s / 20)
+    change_db = 20 * np.log10(
+        MoverEcho(lively, hearing)._grid(times_s)[1][0] / MoverEcho(steady, hearing)._grid(times_s)[1][0]
+    )
+    # Straight between independent values of one a step: two thirds of their variance on average.
+    assert change_db.std() == pytest.approx(2.0 * np.sqrt(2 / 3), rel=0.1)
+    assert change_db.mean() == pytest.approx(0.0, abs=0.3)
+    scene = Scene(sensor=sensor(), duration_s=2.0, movers=(replace(lively, path=lively.path),))
+    assert np.array_equal(np.concatenate(list(scene.blocks(777))), scene.samples())
