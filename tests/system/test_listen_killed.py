@@ -89,7 +89,6 @@ def test_a_pipe_loses_only_what_nobody_could_hear(tmp_path: Path, record_propert
         f"pipe: killed {KILLS} times, {len(found)} movers, none twice; gaps of {min(gaps):.1f} to "
         f"{max(gaps):.1f} s, at most {max(beyond):.1f} s more than the time without a process",
     )
-    assert len(heard) == len(down) + 1
     assert max(beyond) <= 10.0
 
 
