@@ -139,6 +139,17 @@ def test_a_workbook_of_several_tables(here: Ginnel, folder: Path) -> None:
     book.close()
 
 
+def test_a_data_set_goes_into_a_new_folder_only(here: Ginnel, folder: Path) -> None:
+    arguments = ("export", "passages", "--format", "parquet", "--partitioned", "--output", "parts")
+    assert here(*arguments).stderr == f"parts: {N_PASSAGES} rows\n"
+    assert [path.relative_to(folder).as_posix() for path in folder.rglob("*.parquet")] == [
+        "parts/sensor=lane/month=2026-03/part-0.parquet"
+    ]
+    again = here(*arguments)
+    assert again.exit_code == 1
+    assert again.stderr.endswith("is there already: give the name of a new folder\n")
+
+
 def test_records_go_out_and_a_line_tells_what_is_in_none(here: Ginnel) -> None:
     done = here("export", "counts", "--format", "tmg")
     assert done.exit_code == 0
