@@ -26,11 +26,20 @@ class ColumnMap:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Label:
+    """How a file calls the time of a line, and what it has counted then."""
+
+    moment: datetime  # by the local clock, whether that ever showed it or not
+    count: int | None  # all ways together; None: blank
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class ReadCounts:
     """What a file holds, and what is wrong with it."""
 
     counts: tuple[SeriesCount, ...]
     problems: tuple[str, ...]  # one line each
+    labels: tuple[Label, ...]  # of every line with a time by the local clock, in the file's order
 
 
 def read_counts(path: Path, columns: ColumnMap, length_s: int, zone: ZoneInfo) -> ReadCounts:
@@ -45,13 +54,15 @@ def read_counts(path: Path, columns: ColumnMap, length_s: int, zone: ZoneInfo) -
         The file cannot be read, or lacks a column.
     """
     counts: dict[tuple[int, Direction], SeriesCount] = {}
-    problems = []
+    problems: list[str] = []
+    labels: list[Label] = []
     try:
         with path.open(encoding="utf-8-sig", newline="") as stream:
             reader = csv.DictReader(stream)
             _check_header(path, reader.fieldnames or [], columns)
             for number, row in enumerate(reader, start=2):
                 try:
+                    labels += _label(row, columns)
                     for one in _counts_of(row, columns, length_s, zone, counts):
                         counts[one.started_us, one.direction] = one
                 except ValueError as problem:
@@ -62,7 +73,7 @@ def read_counts(path: Path, columns: ColumnMap, length_s: int, zone: ZoneInfo) -
         raise ImportFormatError(f"{path} is no CSV file: {error}") from error
     except OSError as error:
         raise ImportFormatError(f"{path} cannot be read: {error.strerror or error}") from error
-    return ReadCounts(counts=tuple(counts.values()), problems=tuple(problems))
+    return ReadCounts(counts=tuple(counts.values()), problems=tuple(problems), labels=tuple(labels))
 
 
 def _check_header(path: Path, header: Sequence[str], columns: ColumnMap) -> None:
@@ -106,13 +117,25 @@ def _number(text: str) -> int:
     return int(number)
 
 
-def _moments(row: dict[str, str | None], columns: ColumnMap, zone: ZoneInfo) -> list[int]:
-    """Moments that a line's time may be, the earlier first; two where the clock shows it twice."""
-    text = (row[columns.time] or "").strip()
-    moment = datetime.fromisoformat(text)
+def _label(row: dict[str, str | None], columns: ColumnMap) -> list[Label]:
+    """How a line is labelled, if by the local clock."""
+    moment = _as_labelled(row, columns)
+    texts = [text for name, _ in columns.counts if (text := (row[name] or "").strip())]
+    count = sum(_number(text) for text in texts) if texts else None
+    return [] if moment.tzinfo is not None else [Label(moment=moment, count=count)]
+
+
+def _as_labelled(row: dict[str, str | None], columns: ColumnMap) -> datetime:
+    moment = datetime.fromisoformat((row[columns.time] or "").strip())
     if columns.hour is not None:
         hour = (row[columns.hour] or "").strip().split(":")[0]
         moment += timedelta(hours=int(hour))
+    return moment
+
+
+def _moments(row: dict[str, str | None], columns: ColumnMap, zone: ZoneInfo) -> list[int]:
+    """Moments that a line's time may be, the earlier first; two where the clock shows it twice."""
+    moment = _as_labelled(row, columns)
     if moment.tzinfo is not None:
         return [to_us(moment)]
     both = [moment.replace(tzinfo=zone, fold=fold) for fold in (0, 1)]

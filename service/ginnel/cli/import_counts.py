@@ -2,12 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
 from ginnel.cli.options import config_option, quiet_option
 from ginnel.words import Direction
+
+if TYPE_CHECKING:
+    from ginnel.counts_file import Label
+    from ginnel.stats.counts import IntArray
+    from ginnel.words import FloatArray
 
 _LENGTHS_S = {"5min": 300, "15min": 900, "hour": 3600, "day": 86_400}
 _MOST_PROBLEMS = 10  # that are told one by one
@@ -48,12 +55,14 @@ def import_counts(
 ) -> None:
     """Keep counts that others made beside the log, from a CSV FILE of any columns.
 
-    A blank count is no count, not zero. A line that makes no sense is told and left out.
+    A blank count is no count, not zero. A line that makes no sense is told and left out. What looks wrong in
+    the labels of hourly counts (days that begin at six, clock changes not followed, long zeros) is told.
     """
     from ginnel import store as log
     from ginnel.config import load_settings
     from ginnel.counts_file import ColumnMap, read_counts
     from ginnel.reports import zone
+    from ginnel.reports.labels import check_labels
 
     columns = ColumnMap(
         time=time_column,
@@ -62,17 +71,32 @@ def import_counts(
         hour=hour_column,
     )
     with log.open_store(load_settings(config_file).store.url) as store:
-        read = read_counts(file, columns, _LENGTHS_S[every], zone(store))
+        local = zone(store)
+        read = read_counts(file, columns, _LENGTHS_S[every], local)
         if read.counts:
             log.put_series(store, series, file.name, read.counts)
     for problem in read.problems[:_MOST_PROBLEMS]:
         click.echo(f"ginnel: {problem}", err=True)
     if (more := len(read.problems) - _MOST_PROBLEMS) > 0:
         click.echo(f"ginnel: {more} more lines of {file} make no sense either", err=True)
+    if every == "hour" and direction_column is None:
+        for fault in check_labels(*_hours(read.labels), local):
+            click.echo(f"{file} {fault.day} {fault.hour:02}:00, {fault.kind}: {fault.reason}", err=True)
     if not quiet:
         click.echo(f"{series}: {len(read.counts)} counts")
     if read.problems or not read.counts:
         raise SystemExit(1)
+
+
+def _hours(labels: Sequence[Label]) -> tuple[IntArray, IntArray, FloatArray]:
+    """Days, hours and counts of labels, as the check of labels takes them."""
+    import numpy as np
+
+    return (
+        np.array([label.moment.toordinal() for label in labels], np.int64),
+        np.array([label.moment.hour for label in labels], np.int64),
+        np.array([np.nan if label.count is None else label.count for label in labels], float),
+    )
 
 
 def _counts_column(text: str) -> tuple[str, Direction]:

@@ -65,7 +65,7 @@ def aadt(day_counts: FloatArray, weekday: IntArray, month: IntArray) -> Aadt:
     """
     cells, n = group_means(day_counts, weekday * 12 + (month - 1), 84)
     empty = int(np.sum(n == 0))
-    value = None if empty else float(np.mean(np.mean(cells.reshape(7, 12), axis=1)))
+    value = None if empty else float(np.mean(cells))  # all cells weigh the same
     return Aadt(value=value, empty_cells=empty)
 
 
