@@ -6,7 +6,7 @@ means, put right for the spread that noise itself has, is the background. Lines 
 
 Two things come to stay and are not waited for: a rise of all bins at once (a gain step, an input
 plugged in) makes the background forget what was before it, and a line that stays level for
-``_STEADY_S``, as no mover does, is taken in (a lamp switched on).
+``_STEADY_S`` without any flicker, as no body's echo does, is taken in (a lamp switched on).
 """
 
 from __future__ import annotations
@@ -26,6 +26,10 @@ _RISE_S = 6.0
 #: A bin is steady if its steps stay within this ratio for so long; a walker's level changes by
 #: more, with R^-4 and the gait. A line counts from twice the background on.
 _STEADY_S, _STEADY_RATIO, _LINE_RATIO = 10.0, 1.6, 2.0
+#: Squared mean over mean square of a bin's power: 1 for a line, 1/2 for noise and for bodies of many
+#: parts, whose power is exponential; 0.74 for a line four times as strong as the noise. People one
+#: behind the other keep a level for long, but flicker.
+_LEAST_CONSTANCY = 0.65
 
 
 def quantile_of_mean(quantile: float, n_looks: float) -> float:
@@ -44,6 +48,7 @@ class Background:
     def __init__(self, n_bins: int, frames_per_step: int, step_s: float) -> None:
         self._n_looks = frames_per_step
         self._means: deque[FloatArray] = deque(maxlen=max(10, round(_MEMORY_S / step_s)))
+        self._constancies: deque[FloatArray] = deque(maxlen=max(4, round(_STEADY_S / step_s)))
         self._renew_steps = max(1, round(_RENEW_S / step_s))
         self._rise_steps = max(2, round(_RISE_S / step_s))
         self._steady_steps = max(4, round(_STEADY_S / step_s))
@@ -60,7 +65,10 @@ class Background:
         """
         if 2 * len(step_power) < self._n_looks and self._means:
             return
-        self._means.append(step_power.mean(axis=0, dtype=np.float64))
+        mean = step_power.mean(axis=0, dtype=np.float64)
+        mean_square = np.einsum("ij,ij->j", step_power, step_power, dtype=np.float64) / len(step_power)
+        self._means.append(mean)
+        self._constancies.append(mean**2 / np.maximum(mean_square, np.finfo(np.float64).tiny))
         self._n_steps += 1
         self._n_risen = self._n_risen + 1 if is_risen else 0
         if self._n_risen >= self._rise_steps:
@@ -85,6 +93,7 @@ class Background:
         if n > self._steady_steps:
             recent = means[-self._steady_steps :]
             least, most = recent.min(axis=0), recent.max(axis=0)
-            is_line = (least > _LINE_RATIO * power) & (most < _STEADY_RATIO * least)
+            is_level = (least > _LINE_RATIO * power) & (most < _STEADY_RATIO * least)
+            is_line = is_level & (np.mean(self._constancies, axis=0) > _LEAST_CONSTANCY)
             power = np.where(is_line, recent.mean(axis=0), power)
         self.power = power.astype(np.float32)

@@ -32,6 +32,8 @@ _CLIP_LEVEL = 0.999
 DEAF_POWER = 1e-13
 #: Rise of one frame, and of the median of a batch, that chance alone does not bring.
 _FRAME_RISE, _BATCH_RISE = 1.5, 1.4
+#: A gain step lifts all bins alike: the quartiles of their rise lie closer than this (chance alone: 1.4).
+_EVEN_RATIO = 2.0
 #: A rise like this over so many frames is a gain step or an input plugged in: strong movers splash
 #: over all bins too, but less.
 _STEP_RISE, _STEP_FRAMES = 4.0, 33
@@ -168,9 +170,11 @@ class FrontEnd:
         return np.maximum(self._background.power, np.float32(DEAF_POWER))
 
     def _is_risen(self, power: NDArray[np.float32]) -> bool:
-        """Whether all bins at once stand above the background for most of a batch."""
-        rise = _quartile_rise(power, self._floored_background())
-        return bool(np.median(rise) > _BATCH_RISE)
+        """Whether all bins at once, and all alike, stand above the background for most of a batch."""
+        background = self._floored_background()
+        rise = _quartile_rise(power, background)
+        low, high = np.quantile(power.mean(axis=0) / background, (0.25, 0.75))
+        return bool(np.median(rise) > _BATCH_RISE and high < _EVEN_RATIO * low)
 
     def _judge(self, first: int, power: NDArray[np.float32], clipped: NDArray[np.bool_]) -> SpectrumBatch:
         background = self._floored_background()

@@ -114,6 +114,13 @@ def test_a_walker_who_nears_for_fifteen_seconds_is_not_taken_for_a_lamp() -> Non
     assert learnt(steps).power[9] < 1.6
 
 
+@pytest.mark.parametrize("seed", range(5))
+def test_people_one_behind_the_other_keep_a_level_but_flicker_and_are_not_taken_in(seed: int) -> None:
+    steps = noise_steps(83 + 11, seed=seed)
+    steps[83:, :, 9] *= 30.0  # exponential still, as the echo of many parts is
+    assert learnt(steps).power[9] < 1.6
+
+
 def test_a_rise_of_all_bins_is_learnt_within_seven_seconds() -> None:
     background = learnt(noise_steps(83))
     for step in 100.0 * noise_steps(5, seed=9):  # 7.2 s

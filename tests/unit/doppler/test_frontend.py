@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from scipy.signal import butter, sosfilt
 
 from ginnel.doppler.frontend import (
     CELL_FALSE_ALARM_RATE,
@@ -145,6 +146,21 @@ def test_a_gain_step_is_settled_within_ten_seconds(channels: Channels, before: f
     settled = counts[round(110 * rate) :]
     assert settled.sum() <= 4 * CELL_FALSE_ALARM_RATE * len(settled) * front.watched.sum() + 3
     assert np.isfinite(np.concatenate([batch.power for batch in batches])).all()
+
+
+@pytest.mark.parametrize("channels", list(Channels))
+def test_strong_movers_with_broad_limbs_are_no_gain_step(channels: Channels) -> None:
+    """White noise below 2.2 m/s stands for several people's limbs: half the bins, for ten seconds."""
+    rate_hz = 2000.0
+    samples = noise(round(40 * rate_hz), channels)
+    crowd = 10.0 * noise(len(samples), channels, seed=5)
+    band = butter(6, [20.0, 150.0], "bandpass", fs=rate_hz, output="sos")
+    talk = slice(round(20 * rate_hz), round(30 * rate_hz))
+    samples[talk] = samples[talk] + sosfilt(band, crowd)[talk]
+    front, batches = heard(FEET[channels], samples, rate_hz)
+    quiet = np.median(batches[0].background)
+    assert max(float(np.median(batch.background)) for batch in batches) < 2 * quiet
+    assert max(float(batch.background[front.watched].max()) for batch in batches) < 4 * quiet
 
 
 def test_a_click_raises_its_own_frames_only() -> None:
