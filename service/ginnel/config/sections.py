@@ -42,7 +42,7 @@ class ListenSettings(Section):
     """``[listen]``: what the daemon keeps beside the store, and when it writes to the store."""
 
     state: str = Field(default="listening", min_length=1)
-    store_every_s: float = Field(default=30.0, ge=1, le=600)
+    store_every_s: float = Field(default=60.0, ge=1, le=600)
     trust_clock: Literal["when-set", "always"] = "when-set"
 
 

@@ -52,7 +52,7 @@ class Daemon:
         self._clock = clock or SystemClock(is_always_set=settings.listen.trust_clock == "always")
         self._stop, self._stop_outbox, self._hup = Event(), Event(), Event()
         self._store: Store | None = None
-        self._listeners: list[Listener] = []
+        self.listeners: list[Listener] = []
         self._has_failed = False
 
     def stop(self) -> None:
@@ -68,20 +68,20 @@ class Daemon:
             outbox = Outbox(self._connect, spool, self._clock, self._settings.listen.store_every_s)
             self._open_early()
             make = self._maker(outbox, places)
-            self._listeners = [make(sensor) for sensor in self._settings.sensor]
+            self.listeners = [make(sensor) for sensor in self._settings.sensor]
             writer = Thread(target=outbox.run, args=(self._stop_outbox,), name="ginnel-outbox", daemon=True)
             writer.start()
-            for listener in self._listeners:
+            for listener in self.listeners:
                 listener.start()
             jobs = start_jobs(
                 lambda: self._settings,
                 self._clock,
-                lambda: [listener.gauge for listener in self._listeners],
+                lambda: [listener.gauge for listener in self.listeners],
                 lambda: outbox.fault,
             )
             stack.callback(jobs.close)
             notify("READY=1", "STATUS=listening")
-            log.info("listening to %s", ", ".join(listener.name for listener in self._listeners))
+            log.info("listening to %s", ", ".join(listener.name for listener in self.listeners))
             try:
                 self._watch(outbox, writer, make)
             finally:
@@ -148,7 +148,7 @@ class Daemon:
                 log.critical("writing to the store failed for a reason nobody foresaw: ending")
                 self._has_failed = True
                 return
-            if all(listener.has_ended for listener in self._listeners):
+            if all(listener.has_ended for listener in self.listeners):
                 return
             if every_s is not None and now_us - fed_us > every_s / 3 * US_PER_S and self._is_well(fed_us):
                 notify("WATCHDOG=1")
@@ -163,16 +163,16 @@ class Daemon:
         A folder may be empty for hours; there it is enough that somebody looks into it.
         """
         now_us = self._clock.read().steady_us
-        if any(now_us - listener.alive_us > _STUCK_S * US_PER_S for listener in self._listeners):
+        if any(now_us - listener.alive_us > _STUCK_S * US_PER_S for listener in self.listeners):
             return False
         return any(
             (listener.alive_us if listener.is_folder else listener.heard_us) > since_us
-            for listener in self._listeners
+            for listener in self.listeners
         )
 
     def _tell(self, outbox: Outbox) -> None:
         """One line a minute on each sensor."""
-        for listener in self._listeners:
+        for listener in self.listeners:
             state = listener.state
             log.info(
                 "%s: %s, %.1f s waiting, %d samples dropped, %d deliveries wait on disk",
@@ -182,7 +182,7 @@ class Daemon:
                 state.dropped_samples,
                 outbox.n_waiting,
             )
-        faults = [f"{one.name}: {one.state.fault}" for one in self._listeners if one.state.fault]
+        faults = [f"{one.name}: {one.state.fault}" for one in self.listeners if one.state.fault]
         notify("STATUS=" + ("; ".join([*faults, *([outbox.fault] if outbox.fault else [])]) or "listening"))
 
     def _take_settings(self, make: Callable[[SensorSettings], Listener]) -> None:
@@ -192,7 +192,7 @@ class Daemon:
             if (new.store, new.listen) != (self._settings.store, self._settings.listen):
                 log.warning("a change of [store] or [listen] waits until ginnel listen is started again")
             wanted = {sensor.name: sensor for sensor in new.sensor}
-            kept = [one for one in self._listeners if wanted.get(one.name) == one.settings]
+            kept = [one for one in self.listeners if wanted.get(one.name) == one.settings]
             fresh = [
                 make(sensor) for name, sensor in wanted.items() if name not in {one.name for one in kept}
             ]
@@ -200,12 +200,12 @@ class Daemon:
             for line in str(exc).splitlines():
                 log.error("the settings stay as they were: %s", line)
             return
-        gone = [one for one in self._listeners if one not in kept]
+        gone = [one for one in self.listeners if one not in kept]
         for one in gone:
             one.stop()
         for one in gone:
             one.join()
-        self._listeners = [*kept, *fresh]
+        self.listeners = [*kept, *fresh]
         self._settings = new
         self._renew_names()
         for one in fresh:
@@ -227,9 +227,9 @@ class Daemon:
 
     def _end(self, writer: Thread) -> None:
         """Stop listening, then hand on what was heard."""
-        for listener in self._listeners:
+        for listener in self.listeners:
             listener.stop()
-        for listener in self._listeners:
+        for listener in self.listeners:
             listener.join()
         self._stop_outbox.set()
         writer.join()

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import logging
 from collections.abc import Callable
+from contextlib import ExitStack
 from threading import Event, Lock
 
 from ginnel.clock import Clock
 from ginnel.daemon.deliveries import Delivery, merged
 from ginnel.daemon.spool import Spool
 from ginnel.errors import SpanRefusedError, StoreError
-from ginnel.store import Store, extend_span, redate_span
+from ginnel.store import Store, extend_span, kept_open, redate_span
 
 log = logging.getLogger(__name__)
 
@@ -39,6 +40,7 @@ class Outbox:
         self._in_hand: list[Delivery] = []
         self._refused: set[tuple[str, int]] = set()
         self._store: Store | None = None
+        self._in_use = ExitStack()  # the store, closed when `run` ends
         #: Why the store takes nothing, in a line; None while it does.
         self.fault: str | None = None
 
@@ -69,11 +71,10 @@ class Outbox:
 
     def run(self, stop: Event) -> None:
         """Deliver now and then until stopped, and once more then."""
-        while not self._clock.wait(stop, _RETRY_S if self.fault else self._every_s):
+        with self._in_use:
+            while not self._clock.wait(stop, _RETRY_S if self.fault else self._every_s):
+                self.deliver()
             self.deliver()
-        self.deliver()
-        if self._store is not None:
-            self._store.close()
 
     def deliver(self) -> None:
         """Hand over what there is, to the store or else to the spool."""
@@ -95,7 +96,7 @@ class Outbox:
         done = 0
         try:
             if self._store is None:
-                self._store = self._connect()
+                self._store = self._open()
             while self._spool.n_waiting:
                 for number, one in self._spool.first(_AT_ONCE):
                     self._hand_over(self._store, one)
@@ -110,6 +111,11 @@ class Outbox:
                 log.info("the store takes passages again")
             self.fault = None
         return fresh[done:]
+
+    def _open(self) -> Store:
+        store = self._in_use.enter_context(self._connect())
+        self._in_use.enter_context(kept_open(store))
+        return store
 
     def _hand_over(self, store: Store, one: Delivery) -> None:
         if one.key in self._refused:

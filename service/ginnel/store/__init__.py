@@ -36,7 +36,7 @@ from ginnel.store.hourly import (
 )
 from ginnel.store.hours import roll_up_hours
 from ginnel.store.jobs import JobRecord, job_records, put_job
-from ginnel.store.live import extend_span, listened_until_us, redate_span
+from ginnel.store.live import extend_span, kept_open, listened_until_us, redate_span
 from ginnel.store.log import SpanChange, put_sensor, put_site, record_span
 from ginnel.store.query import (
     LoggedPassage,
@@ -97,6 +97,7 @@ __all__ = [
     "iter_passage_columns",
     "iter_passages",
     "job_records",
+    "kept_open",
     "latest_health",
     "latest_passages",
     "listened_until_us",

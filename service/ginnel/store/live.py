@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+import sqlite3
+from collections.abc import Iterable, Iterator
+from contextlib import closing, contextmanager
 
 from sqlalchemy import delete, func, insert, select, update
 from sqlalchemy.dialects import postgresql, sqlite
 
-from ginnel.errors import SpanRefusedError
+from ginnel.errors import SpanRefusedError, StoreBusyError
 from ginnel.store.codes import PassageCodes
 from ginnel.store.engine import Store
 from ginnel.store.log import (
@@ -152,6 +154,25 @@ def listened_until_us(store: Store, sensor_name: str) -> int | None:
             .join(SensorRow, SensorRow.id == SpanRow.sensor_id)
             .where(SensorRow.name == sensor_name, SpanRow.clock_trusted)
         ).scalar()
+
+
+@contextmanager
+def kept_open(store: Store) -> Iterator[None]:
+    """Keep a SQLite store in use for as long as this lasts; another one needs no such thing.
+
+    When its last user leaves, SQLite copies its write-ahead log into the file. Whoever writes a little every
+    minute would so write all of it twice, which wears a flash card.
+    """
+    if store.dialect != "sqlite":
+        yield
+        return
+    with closing(sqlite3.connect(store.name, check_same_thread=False)) as connection:
+        try:
+            # only now it is a user; no transaction stays open
+            connection.execute("SELECT count(*) FROM sqlite_master").fetchone()
+        except sqlite3.Error as exc:
+            raise StoreBusyError(f"{store.name}: {exc}") from exc
+        yield
 
 
 def _moved(codes: tuple[int | None, ...], by_us: int) -> dict[str, int | None]:
