@@ -114,7 +114,7 @@ def _at_door(store: Store, door: Door, reset_us: IntArray, ends_us: IntArray) ->
     edges_us = np.unique(np.concatenate([reset_us, ends_us]))
     before = np.concatenate([[0], np.cumsum(union_us_in(edges_us, *spans))])
     heard_us = before[np.searchsorted(edges_us, ends_us)] - before[np.searchsorted(edges_us, reset_us)]
-    passed = entered + left + unknown
+    passed = entered + left + unknown + 1  # one more: who has seen nobody yet does not know that nobody comes
     missing_us = (ends_us - reset_us) - heard_us
     unheard = np.divide(passed * missing_us, heard_us, out=np.zeros(len(ends_us)), where=heard_us > 0)
     return _AtDoor(

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from ginnel.reports.calendar import Calendar, calendar
 from ginnel.reports.flow import Flow, flow
 from ginnel.reports.intervals import Every, cut
-from ginnel.stats import Mean, mean_with_limits
+from ginnel.stats import Mean, expand, mean_with_limits
 from ginnel.stats.counts import IntArray
 from ginnel.stats.volumes import Aadt, aadt, directional_split, factors, highest_hour, k_factor
 from ginnel.store import Store
@@ -42,7 +42,11 @@ class DesignHour:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Volumes:
-    """What a traffic engineer wants to know of a stretch of whole days."""
+    """What a traffic engineer wants to know of a stretch of whole days.
+
+    Average daily traffic is the counts of whole days over their number; over a year that is the simple AADT.
+    Source: FHWA Traffic Monitoring Guide (2022), appendix L.
+    """
 
     days: int  # used
     days_left_out: int  # not listened to, or too little
@@ -111,9 +115,7 @@ def by_day(hours: Flow, zone: tzinfo) -> Flow:
 
 def complete(one: Flow, least: float = LEAST_COVERAGE) -> FloatArray:
     """Counts of both ways, expanded to whole intervals; NaN where less than ``least`` was listened to."""
-    found: FloatArray = np.full(len(one.listened_us), np.nan)
-    np.divide(one.both, one.coverage, out=found, where=one.coverage >= least)
-    return found
+    return np.where(one.coverage >= least, expand(one.both.astype(float), one.coverage), np.nan)
 
 
 def _design_hours(hours: Flow, hour_counts: FloatArray, base: float | None) -> Iterator[DesignHour]:

@@ -43,17 +43,6 @@ def grouped_quantiles(
     return [float(value) for value in low + part * (high - low)]
 
 
-def grouped_mean_sd(counts: IntArray, edges: FloatArray) -> tuple[float | None, float | None]:
-    """Mean and sample standard deviation with each value at the middle of its class."""
-    n = int(np.sum(counts))
-    if n == 0:
-        return None, None
-    middle = (np.asarray(edges[1:], float) + edges[:-1]) / 2
-    mean = float(np.sum(counts * middle) / n)
-    sd = float(np.sqrt(np.sum(counts * (middle - mean) ** 2) / (n - 1))) if n > 1 else None
-    return mean, sd
-
-
 def grouped_pace(counts: IntArray, edges: FloatArray, width_mps: float) -> Pace | None:
     """Pace from classes, between limits of classes; None where nothing is counted.
 

@@ -36,18 +36,6 @@ def group_means(values: FloatArray, group: IntArray, n_groups: int) -> tuple[Flo
     return np.divide(sums, n, out=np.full(n_groups, np.nan), where=n > 0), n
 
 
-def average_daily(day_counts: FloatArray) -> float | None:
-    """Average daily traffic: counts of whole days over their number; None without any.
-
-    Notes
-    -----
-    Over a year this is the simple AADT. Source: FHWA Traffic Monitoring Guide (2022), appendix L.
-    52,800 in 30 days are 1,760 a day.
-    """
-    known = day_counts[np.isfinite(day_counts)]
-    return float(np.mean(known)) if len(known) else None
-
-
 def aadt(day_counts: FloatArray, weekday: IntArray, month: IntArray) -> Aadt:
     """Annual average daily traffic by the AASHTO method, which missing days do not bias.
 

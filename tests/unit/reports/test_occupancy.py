@@ -124,10 +124,10 @@ def test_time_unheard_widens_the_limits_and_a_door_never_heard_has_no_answer(sto
         None,
         "a door was not listened to since the space was last empty",
     )
-    # south was heard for one of six hours and saw 10: 50 more may have passed, all one way
+    # south was heard for one of six hours and saw 10: 5 times 11 more may have passed, all one way
     assert after.inside == 30
     assert after.low == 0
-    assert after.high == pytest.approx(80)
+    assert after.high == pytest.approx(30 + 55)
 
 
 def test_passages_of_unknown_direction_widen_the_limits(store: Store) -> None:

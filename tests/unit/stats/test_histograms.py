@@ -8,7 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from ginnel.stats import pace, quantiles
-from ginnel.stats.histograms import grouped_mean_sd, grouped_pace, grouped_quantiles
+from ginnel.stats.histograms import grouped_pace, grouped_quantiles
 
 # Iowa Handbook of Simplified Practice for Traffic Studies (CTRE, TR-455), Table 2: mph and vehicles. Its
 # printed cumulative 23 at 27 mph is a misprint for 34 (the next is 54).
@@ -39,7 +39,6 @@ def test_130_vehicles() -> None:
     assert found == pytest.approx([52.2083, 68.0714, 87.6250, 102.0], abs=5e-5)
     published = grouped_quantiles(TABLE_N, TABLE_KMH, [0.5, 0.85])
     assert published == pytest.approx([68.1, 88], abs=0.5)  # the second read off a curve there
-    assert grouped_mean_sd(TABLE_N, TABLE_KMH) == pytest.approx((69.8846, 16.5171), abs=5e-5)
     best = grouped_pace(TABLE_N, TABLE_KMH, 10)
     assert best is not None
     assert (best.low_mps, best.high_mps, best.n) == (64.5, 74.5, 37)  # 28.46 %; published 30 % off a curve
@@ -77,7 +76,6 @@ def test_many_walkers_have_the_same_percentiles_from_classes_as_from_passages() 
 def test_nothing_has_no_percentile() -> None:
     assert grouped_quantiles(np.zeros(3, np.int64), np.arange(4.0), [0.5]) is None
     assert grouped_pace(np.zeros(3, np.int64), np.arange(4.0), 1) is None
-    assert grouped_mean_sd(np.zeros(3, np.int64), np.arange(4.0)) == (None, None)
 
 
 def test_empty_classes_around_change_nothing() -> None:
