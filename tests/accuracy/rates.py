@@ -51,7 +51,7 @@ def table(found: list[list[Passage]]) -> str:
         )
         off = max((abs(_speed(other) / _speed(one) - 1.0) for one, other in pairs), default=0.0)
         met = (
-            len(pairs) == len(first) == len(passages)
+            0 < len(pairs) == len(first) == len(passages)
             and not wrong
             and apart_s <= WITHIN_S
             and off <= WITHIN_SPEED
