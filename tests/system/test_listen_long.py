@@ -1,4 +1,4 @@
-"""Memory, threads and files of a daemon that runs on and on; GINNEL_HOURS says for how long (1 without it)."""
+"""Memory, threads and files of a daemon that runs on and on, for GINNEL_HOURS (1 without it)."""
 
 from __future__ import annotations
 
