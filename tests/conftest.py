@@ -2,7 +2,12 @@
 
 from __future__ import annotations
 
+import hypothesis
 import pytest
+
+# no test is timed: on a busy machine any example may take long
+hypothesis.settings.register_profile("untimed", deadline=None)
+hypothesis.settings.load_profile("untimed")
 
 
 def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter) -> None:
