@@ -13,7 +13,20 @@ from alembic.script import ScriptDirectory
 from sqlalchemy import CheckConstraint, Connection, inspect, text
 
 from ginnel.errors import SchemaMismatchError, StoreError
-from ginnel.store import check, current, iter_passages, open_store, record_span, schema, spans, upgrade
+from ginnel.store import (
+    check,
+    current,
+    find_faults,
+    hourly_counts,
+    hourly_listening,
+    iter_passages,
+    open_store,
+    record_span,
+    roll_up_hours,
+    schema,
+    spans,
+    upgrade,
+)
 from ginnel.store.engine import make_engine
 from ginnel.store.tables import Base
 from ginnel.words import Direction, Passage, Sensor, Span
@@ -96,6 +109,48 @@ def test_upgrading_a_filled_store_keeps_what_is_in_it(store_url: str) -> None:
     with open_store(store_url) as store:
         assert [one.passage for one in iter_passages(store)] == [passage]
         assert [one.span for one in spans(store)] == [span]
+
+
+def test_what_was_logged_before_there_were_roll_ups_is_rolled_up(store_url: str) -> None:
+    """A store of the first version: a span over three hours, and a crossing just after it, in a fourth."""
+    hour_us = 3_600_000_000
+    upgrade(store_url, "0001")
+    say(
+        store_url,
+        "INSERT INTO sensor (id, name, carrier_hz, channels, swap_iq, mains_hz, speed_bands_mps, min_speed_mps,"
+        " max_speed_mps, approaching_name, receding_name)"
+        " VALUES (1, 'north', 1e10, 'mono', FALSE, 50, '[]', 0.3, 5, 'in', 'out')",
+    )
+    say(
+        store_url,
+        "INSERT INTO mounting (id, sensor_id, aspect, height_m, offset_m, beam_angle_deg, tilt_deg)"
+        " VALUES (1, 1, 'axial', 2, 0, 0, 0)",
+    )
+    say(
+        store_url,
+        "INSERT INTO reading (id, sensor_id, mounting_id, chain_version, settings) VALUES (1, 1, 1, '1', '')",
+    )
+    say(
+        store_url,
+        "INSERT INTO span (sensor_id, reading_id, started_us, ended_us, sample_rate_hz, clock_trusted)"
+        f" VALUES (1, 1, {10 * hour_us + 1}, {13 * hour_us}, 8000, TRUE)",
+    )
+    for crossed_us in (11 * hour_us, 11 * hour_us + 1, 13 * hour_us + 5):
+        say(
+            store_url,
+            "INSERT INTO passage (sensor_id, crossed_us, started_us, ended_us, reading_id, story, direction, flags)"
+            f" VALUES (1, {crossed_us}, {11 * hour_us}, {11 * hour_us}, 1, 0, 1, 0)",
+        )
+    upgrade(store_url)
+    with open_store(store_url) as store:
+        for _ in range(2):
+            counts = hourly_counts(store, "north", 0, 99 * hour_us)
+            assert counts.hour_us.tolist() == [11 * hour_us, 13 * hour_us]
+            assert counts.count.tolist() == [2, 1]
+            listening = hourly_listening(store, "north", 0, 99 * hour_us)
+            assert listening.listened_us.tolist() == [hour_us - 1, hour_us, hour_us]
+            assert roll_up_hours(store, 99 * hour_us) in (4, 0)
+        assert find_faults(store) == []
 
 
 def revisions() -> list[str]:

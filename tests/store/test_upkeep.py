@@ -287,6 +287,7 @@ def test_a_dead_input_is_raised_stored_and_cleared(store: Store, settings: Setti
         clock.wall_us += 60 * S
     assert kinds == [[], [], [("input-dead", None)], [], [("input-dead", T0 + 240 * S)], []]
     assert open_conditions(store) == []
+    watch.save(store)
     samples = list(iter_health(store, "north"))
     assert [one.at_us for one in samples] == [T0 + 60 * S * i for i in range(6)]
     assert samples[0].level_dbfs == -200

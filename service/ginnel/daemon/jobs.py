@@ -78,6 +78,11 @@ class Housekeeping:
         if self._scheduler is not None:
             self._scheduler.shutdown(wait=True)
             self._scheduler = None
+        try:
+            with open_store(self._url) as store:
+                self._minute.save(store)
+        except StoreError as exc:
+            log.warning("the last minutes of health are lost: %s", exc)
 
     def take_minute(self) -> None:
         """Health, conditions, and room on the disk."""

@@ -23,6 +23,8 @@ log = logging.getLogger(__name__)
 
 #: What is usual changes slowly, and costs some milliseconds to find out.
 _USUAL_US = 1800 * US_PER_S
+#: Minutes stored together: every commit wears a flash card, whatever is in it.
+_MINUTES_TOGETHER = 5
 #: Minutes that wait while the store takes nothing: a day of them.
 _MINUTES_KEPT = 1440
 
@@ -51,6 +53,8 @@ class MinuteWatch:
         self._has_adopted = False
         self._usual: dict[str, tuple[int, Usual]] = {}
         self._unsaved: deque[LoggedHealth] = deque(maxlen=_MINUTES_KEPT)
+        self._saved_us = 0
+        self._save_trouble: str | None = None
         self._untold: deque[Condition] = deque(maxlen=_MINUTES_KEPT)
 
     def run(self, store: Store | None, trouble: str | None = None) -> list[Condition]:
@@ -64,11 +68,11 @@ class MinuteWatch:
         computer = computer_health(self._folder)
         minutes = [gauge.take(now.wall_us, computer) for gauge in self._gauges()]
         self._unsaved.extend(LoggedHealth(sensor=one.sensor.name, sample=one.sample) for one in minutes)
-        trouble = self._store_trouble() or trouble
+        trouble = self._store_trouble() or trouble or self._save_trouble
         jobs: dict[str, JobRecord] = {}
         if store is not None:
             try:
-                self._save(store)
+                self._save_conditions(store)
                 jobs = log_on_disk.job_records(store)
             except StoreError as exc:
                 trouble = trouble or str(exc)
@@ -86,15 +90,30 @@ class MinuteWatch:
             findings += sensor_findings(minute, self._usual_of(store, minute, now.wall_us))
         changes += self._watch.push(now.wall_us, findings)
         self._tell(changes)
-        if store is not None and self._has_adopted:
+        is_time = not 0 <= now.wall_us - self._saved_us < _MINUTES_TOGETHER * 60 * US_PER_S
+        if store is not None and (changes or is_time):
+            self._save_trouble = None
             try:
-                self._save_conditions(store)
+                self.save(store)
             except StoreError as exc:
-                log.debug("conditions wait: %s", exc)  # the next minute raises one of its own
+                self._save_trouble = str(exc)  # the next minute tells
         return changes
 
-    def _save(self, store: Store) -> None:
-        """Store what waits; what was told and not stored is stored first."""
+    def save(self, store: Store) -> None:
+        """Store what waits: conditions, and the minutes since the last time.
+
+        Raises
+        ------
+        StoreError
+            It cannot be written. All waits on.
+        """
+        self._save_conditions(store)
+        if self._unsaved:
+            log_on_disk.put_health(store, tuple(self._unsaved))
+            self._saved_us = self._unsaved[-1].sample.at_us
+            self._unsaved.clear()
+
+    def _save_conditions(self, store: Store) -> None:
         if not self._has_adopted:
             raised = log_on_disk.open_conditions(store)
             known = {(one.kind, one.sensor) for one in raised}
@@ -104,11 +123,6 @@ class MinuteWatch:
             )
             self._watch.adopt(raised)
             self._has_adopted = True
-        self._save_conditions(store)
-        log_on_disk.put_health(store, tuple(self._unsaved))
-        self._unsaved.clear()
-
-    def _save_conditions(self, store: Store) -> None:
         if self._untold:
             log_on_disk.put_conditions(store, tuple(self._untold))
             self._untold.clear()

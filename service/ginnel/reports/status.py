@@ -12,8 +12,8 @@ from ginnel.store import JobRecord, Store
 from ginnel.words import US_PER_S, Condition, HealthSample, Severity
 
 HOUR_US = 3600 * US_PER_S
-#: Health is told every minute; after so long without, nobody is listening.
-_SILENT_US = 200 * US_PER_S
+#: Spans grow every minute or so, and health is told every five; after so long without, nobody is listening.
+_SILENT_US = 400 * US_PER_S
 #: A sensor that was not heard of for so long, and is not asked for by name, has been taken down.
 _GONE_US = 7 * 24 * HOUR_US
 

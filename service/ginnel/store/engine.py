@@ -12,7 +12,7 @@ from typing import Any, Self
 from sqlalchemy import Connection, Engine, create_engine, event
 from sqlalchemy.engine import URL, make_url
 from sqlalchemy.exc import ArgumentError, DBAPIError, NoSuchModuleError
-from sqlalchemy.pool import NullPool
+from sqlalchemy.pool import NullPool, QueuePool
 
 from ginnel.errors import StoreBusyError, StoreDamagedError, StoreError, StoreFullError
 
@@ -119,10 +119,12 @@ def make_engine(url: str, *, create: bool = False, read_only: bool = False) -> E
     path = _checked_file(parsed, create=create)
     # The file is opened by name, not by URI: a name may hold any character.
     mode = "ro" if read_only else "rwc" if create else "rw"
+    # A writer keeps a connection: when the last one closes, SQLite copies the log of writes into the file
+    # and removes it, which would wear a flash card with every commit. A reader keeps none, so that it sees
+    # a store that was restored meanwhile.
+    pool: dict[str, Any] = {"poolclass": NullPool} if read_only else {"poolclass": QueuePool, "pool_size": 1}
     engine = create_engine(
-        URL.create("sqlite+pysqlite", database=str(path)),
-        creator=lambda: _connected(path, mode),
-        poolclass=NullPool,
+        URL.create("sqlite+pysqlite", database=str(path)), creator=lambda: _connected(path, mode), **pool
     )
     event.listen(engine, "begin", _begin)
     return engine

@@ -9,10 +9,10 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import asdict, dataclass, fields
-from itertools import pairwise
+from itertools import chain, pairwise
 
 import numpy as np
-from sqlalchemy import Connection, delete, insert, select
+from sqlalchemy import Connection, delete, func, insert, select
 
 from ginnel.store.engine import Store
 from ginnel.store.rollup import Rollup, roll_up
@@ -144,7 +144,7 @@ def _listened_us(connection: Connection, sensor_id: int, first: int, last: int) 
     ).all()
     if not spans:
         return {}
-    bounds = np.array(spans, np.int64)
+    bounds = np.fromiter(chain.from_iterable(spans), np.int64).reshape(-1, 2)
     starts_us = np.arange(first, last, dtype=np.int64)[:, None] * HOUR_US
     shared_us = np.minimum(bounds[:, 1], starts_us + HOUR_US) - np.maximum(bounds[:, 0], starts_us)
     listened_us = np.maximum(shared_us, 0).sum(axis=1)  # spans of a sensor never overlap
@@ -153,13 +153,18 @@ def _listened_us(connection: Connection, sensor_id: int, first: int, last: int) 
 
 def _passages(connection: Connection, sensor_id: int, first: int, last: int) -> Iterator[tuple[Key, Rollup]]:
     rows = connection.execute(
-        select(PassageRow.crossed_us, PassageRow.story, PassageRow.direction, PassageRow.speed_umps).where(
+        select(
+            PassageRow.crossed_us,
+            PassageRow.story,
+            PassageRow.direction,
+            func.coalesce(PassageRow.speed_umps, -1),
+        ).where(
             PassageRow.sensor_id == sensor_id,
             PassageRow.crossed_us >= first * HOUR_US,
             PassageRow.crossed_us < last * HOUR_US,
         )
     ).all()
-    values = np.array([(-1 if value is None else value) for row in rows for value in row], np.int64)
+    values = np.fromiter(chain.from_iterable(rows), np.int64)
     crossed_us, story, direction, speed_umps = values.reshape(-1, 4).T
     keys, which = np.unique(
         np.stack([crossed_us // HOUR_US, story, direction], axis=1), axis=0, return_inverse=True
