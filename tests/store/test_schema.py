@@ -117,8 +117,8 @@ def test_what_was_logged_before_there_were_roll_ups_is_rolled_up(store_url: str)
     upgrade(store_url, "0001")
     say(
         store_url,
-        "INSERT INTO sensor (id, name, carrier_hz, channels, swap_iq, mains_hz, speed_bands_mps, min_speed_mps,"
-        " max_speed_mps, approaching_name, receding_name)"
+        "INSERT INTO sensor (id, name, carrier_hz, channels, swap_iq, mains_hz, speed_bands_mps,"
+        " min_speed_mps, max_speed_mps, approaching_name, receding_name)"
         " VALUES (1, 'north', 1e10, 'mono', FALSE, 50, '[]', 0.3, 5, 'in', 'out')",
     )
     say(
@@ -138,7 +138,8 @@ def test_what_was_logged_before_there_were_roll_ups_is_rolled_up(store_url: str)
     for crossed_us in (11 * hour_us, 11 * hour_us + 1, 13 * hour_us + 5):
         say(
             store_url,
-            "INSERT INTO passage (sensor_id, crossed_us, started_us, ended_us, reading_id, story, direction, flags)"
+            "INSERT INTO passage (sensor_id, crossed_us, started_us, ended_us, reading_id, story, direction,"
+            " flags)"
             f" VALUES (1, {crossed_us}, {11 * hour_us}, {11 * hour_us}, 1, 0, 1, 0)",
         )
     upgrade(store_url)
