@@ -95,7 +95,7 @@ class StreamSource:
         while True:
             item = self._inbox.get(_IDLE_S)
             if isinstance(item, _Arrival):
-                yield from self._dating.push(item.samples, item.at)
+                yield from self._dating.push(item.samples, item.at) or [Idle()]
             elif isinstance(item, _Lost):
                 if item.is_end:
                     yield from self._dating.finish()

@@ -129,15 +129,19 @@ class Listener:
             return None, until_us[0]
         self._outbox.put(*left.deliveries)
         deliveries = list(left.deliveries)
+        place = left.place
         if self.is_folder:
             self._span = left.span
+            if left.span is not None and left.span.sensor != self.settings.to_sensor(left.span.key[1]):
+                self._end_span("the settings are others now")
+                place = _without_span(place)
         elif left.span is not None:
             log.info("%s: goes on after an abrupt end", self.name)
             deliveries.append(left.span.finish())
             self._save(None, deliveries[-1])
             self._outbox.put(deliveries[-1])
         until_us += [one.span.ended_us for one in deliveries if one.span.clock_trusted]
-        return left.place, max((us for us in until_us if us is not None), default=None)
+        return place, max((us for us in until_us if us is not None), default=None)
 
     def _take(self, heard: Heard) -> None:
         """Do what is due for one thing heard."""
@@ -228,6 +232,9 @@ class Listener:
         if self._span is not None:
             self._hand_on(self._span.take())
         if isinstance(self._source, FolderSource):
+            if self._span is not None and self._outbox.is_refused(self._span.key):
+                self._end_span("the store refused it")
+                self._source.place = _without_span(self._source.place)
             self._source.let_go(heard.path)
         log.info("%s: heard %s", self.name, heard.path.name)
 
@@ -259,3 +266,8 @@ class Listener:
             if fault != self._told_fault:
                 log.warning("%s: hears nothing: %s", self.name, fault)
         self._told_fault = fault
+
+
+def _without_span(place: FolderPlace | None) -> FolderPlace:
+    """The same files done with, and whatever follows begins a span."""
+    return FolderPlace() if place is None else FolderPlace(read_names=place.read_names)

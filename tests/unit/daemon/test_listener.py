@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import threading
+import wave
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -13,6 +14,7 @@ from tests.unit.capture.ear import wait_until
 from tests.unit.capture.fed_clock import START_US, FedClock
 from tests.unit.capture.simulated import RATE_HZ, SENSOR, pcm, replayed, samples_of
 
+from ginnel.capture import FolderSource
 from ginnel.config import Settings, load_settings
 from ginnel.daemon import outbox as outbox_module
 from ginnel.daemon.listener import Listener
@@ -239,3 +241,48 @@ def test_a_failure_nobody_foresaw_is_told_and_listening_begins_anew(
         one.send(pcm())
     assert "listening failed and begins anew" in caplog.text
     assert len(one.spans()) == 1
+
+
+def heard_from_folder(folder: Path, text: str, n_files: int) -> list[str]:
+    """Listen until so many files were heard; which passages the store holds then."""
+    (folder / "ginnel.toml").write_text(text, "utf-8")
+    settings = load_settings(folder / "ginnel.toml")
+    with open_store(settings.store.url, create=True) as store:
+        outbox = Outbox(lambda: store, Spool(folder / "undelivered.db"), FedClock(), 30.0)
+        clock = FedClock()
+        places = Places(lasting=folder, fleeting=folder)
+        listener = Listener(settings.sensor[0], outbox, places, clock, lambda name: None)
+        listener.start()
+
+        def is_read() -> bool:
+            clock.pass_s(0.5)
+            outbox.deliver()
+            source = listener._source
+            return isinstance(source, FolderSource) and len(source.place.read_names) == n_files
+
+        wait_until(is_read)
+        listener.stop()
+        listener.join()
+        outbox.deliver()
+        return [one.passage.direction.value for one in iter_passages(store, with_uncounted=True)]
+
+
+def test_a_folder_is_heard_on_under_other_settings_from_the_next_file_on(tmp_path: Path) -> None:
+    captures = tmp_path / "captures"
+    captures.mkdir()
+    text = SETTINGS.format(more="").split('kind = "pipe"')[0] + "settle_s = 1"
+    write_capture(captures, 0)
+    assert heard_from_folder(tmp_path, text, 1) == ["approaching", "receding"]
+    write_capture(captures, 50)  # joins
+    assert heard_from_folder(tmp_path, text.replace("2.4", "2.6"), 2) == ["approaching", "receding"] * 2
+    with open_store(f"sqlite:///{tmp_path / 'ginnel.db'}") as store:
+        first, second = (one.span for one in spans(store))
+        assert first.ended_us == second.started_us == START_US + 50 * US_PER_S
+        with store.reading() as connection:
+            assert len(connection.exec_driver_sql("SELECT DISTINCT reading_id FROM span").all()) == 2
+
+
+def write_capture(folder: Path, second: int) -> None:
+    with wave.open(str(folder / f"lane-20260302T0800{second:02d}Z.wav"), "wb") as file:
+        file.setparams((1, 2, int(RATE_HZ), 0, "NONE", ""))
+        file.writeframes(pcm())
