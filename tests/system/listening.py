@@ -48,8 +48,12 @@ def write_settings(folder: Path, source: str, url: str = "sqlite:///ginnel.db") 
     (folder / "ginnel.toml").write_text(SETTINGS.format(url=url, source=source), "utf-8")
 
 
-def wait_until(claim: Callable[[], object], process: subprocess.Popen[str] | None = None) -> None:
-    deadline = time.monotonic() + PATIENCE_S
+def wait_until(
+    claim: Callable[[], object],
+    process: subprocess.Popen[str] | None = None,
+    patience_s: float = PATIENCE_S,
+) -> None:
+    deadline = time.monotonic() + patience_s
     while not claim():
         assert time.monotonic() < deadline
         assert process is None or process.poll() is None, "it has ended"

@@ -125,7 +125,7 @@ def test_a_folder_misses_nothing_at_all(tmp_path: Path, record_property: Tell) -
         assert len({row[0] for row in left}) == len(left)
         assert set(left) <= set(expected), "nothing that a replay would not find"
     with listening(killed) as process:
-        wait_until(lambda: passages(killed) == expected, process)
+        wait_until(lambda: passages(killed) == expected, process, patience_s=90.0 + 20.0 * n_files)
         process.terminate()
         assert process.wait(60) == 0
     assert passages(killed) == expected
