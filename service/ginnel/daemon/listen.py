@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import ctypes
 import logging
 import signal
 from collections.abc import Callable
@@ -15,6 +14,7 @@ from ginnel.clock import Clock, SystemClock
 from ginnel.config import SensorSettings, Settings, load_settings
 from ginnel.daemon.jobs import start_jobs
 from ginnel.daemon.listener import Listener
+from ginnel.daemon.memory import give_memory_back, use_memory_sparingly
 from ginnel.daemon.notify import notify, watchdog_s
 from ginnel.daemon.outbox import Outbox
 from ginnel.daemon.places import Lock, Places, make_places
@@ -62,6 +62,7 @@ class Daemon:
 
     def run(self) -> bool:
         """Listen; tells whether it ended as it should."""
+        use_memory_sparingly()
         with ExitStack() as stack:
             places = make_places(Path(self._settings.listen.state))
             stack.enter_context(Lock(places))
@@ -173,7 +174,7 @@ class Daemon:
 
     def _tell(self, outbox: Outbox) -> None:
         """One line a minute on each sensor."""
-        _give_memory_back()
+        give_memory_back()
         for listener in self.listeners:
             state = listener.state
             log.info(
@@ -235,13 +236,6 @@ class Daemon:
             listener.join()
         self._stop_outbox.set()
         writer.join()
-
-
-def _give_memory_back() -> None:
-    """Let the system have memory that the C library keeps, though it was used once only, in a crowd."""
-    trim = getattr(ctypes.CDLL(None), "malloc_trim", None)  # glibc has it
-    if trim is not None:
-        trim(0)
 
 
 def listen(config_file: Path | None) -> bool:
