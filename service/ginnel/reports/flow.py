@@ -101,6 +101,20 @@ def flow(store: Store, sensor: str, edges_us: IntArray) -> Flow:
     return Flow(edges_us=edges_us, listened_us=listened_us, counts=counts)
 
 
+def joined(fine: Flow, edges_us: IntArray) -> Flow:
+    """Join the intervals of a flow to longer ones, whose edges are among its own."""
+    at = np.searchsorted(fine.edges_us, edges_us)
+
+    def summed(values: IntArray) -> IntArray:
+        return np.diff(np.concatenate([[0], np.cumsum(values)])[at]).astype(np.int64)
+
+    return Flow(
+        edges_us=edges_us,
+        listened_us=summed(fine.listened_us),
+        counts={way: summed(count) for way, count in fine.counts.items()},
+    )
+
+
 def total(one: Flow) -> Total:
     """Add up the intervals of a flow."""
     known = bool(one.is_known.any())
@@ -140,8 +154,12 @@ def usual(
 
 
 def typical_week(store: Store, sensor: str, start_us: int, end_us: int, zone: tzinfo) -> TypicalWeek:
+    """Typical week of a stretch of time: see `typical_week_of`."""
+    return typical_week_of(flow(store, sensor, cut(start_us, end_us, Every.HOUR, zone)), zone)
+
+
+def typical_week_of(hours: Flow, zone: tzinfo) -> TypicalWeek:
     """Passages an hour by weekday and clock hour: all that were counted over all hours listened."""
-    hours = flow(store, sensor, cut(start_us, end_us, Every.HOUR, zone))
     group = _group(hours.edges_us, Every.HOUR, zone)
     counted = np.bincount(group, weights=hours.both, minlength=_HOURS_A_WEEK)
     listened_h = np.bincount(group, weights=hours.listened_us, minlength=_HOURS_A_WEEK) / 3600 / US_PER_S

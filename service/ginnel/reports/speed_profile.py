@@ -12,14 +12,14 @@ from itertools import pairwise
 import numpy as np
 
 from ginnel import store as log
+from ginnel.reports.calendar import calendar
 from ginnel.reports.intervals import Every, cut
 from ginnel.stats import SpeedSummary
 from ginnel.stats.counts import IntArray
 from ginnel.stats.histograms import grouped_pace
 from ginnel.stats.pace import Pace
-from ginnel.store import Rollup, Store, merge
+from ginnel.store import HourlySpeeds, Rollup, Store, merge
 from ginnel.store.rollup import BIN_MPS, roll_up
-from ginnel.times import from_us
 from ginnel.words import Direction, FloatArray
 
 _UMPS = 1e6
@@ -37,6 +37,40 @@ class SpeedProfile:
     counts: IntArray  # shape (n,)
 
 
+def read_speeds(store: Store, sensor: str, start_us: int, end_us: int, zone: tzinfo) -> HourlySpeeds:
+    """Roll-ups by hour of the local clock and direction, read once for all that is asked of them."""
+    edges_us = cut(start_us, end_us, Every.HOUR, zone)
+    if log.are_whole_hours(edges_us):
+        return log.hourly_speeds(store, sensor, start_us, end_us)
+    passages = log.passage_arrays(store, sensor, start_us, end_us)
+    umps = np.round(np.nan_to_num(passages.speed_mps, nan=-1.0) * _UMPS).astype(np.int64)
+    hour = np.searchsorted(edges_us, passages.crossed_us, side="right") - 1
+    keys, which = np.unique(np.stack([hour, passages.direction], axis=1), axis=0, return_inverse=True)
+    return HourlySpeeds(
+        hour_us=edges_us[keys[:, 0]],
+        direction=keys[:, 1].astype(np.int8),
+        rollups=tuple(roll_up(umps[which == number]) for number in range(len(keys))),
+    )
+
+
+def profiles_of(
+    hours: HourlySpeeds, *, bin_mps: float, pace_width_mps: float, limit_mps: float | None = None
+) -> tuple[SpeedProfile, ...]:
+    """Profiles of approaching, receding, unknown where there is any, and of all together, in this order.
+
+    ``bin_mps`` is the width of the histogram's classes, ``pace_width_mps`` that of the pace.
+    """
+    ways = (Direction.APPROACHING, Direction.RECEDING, Direction.UNKNOWN)
+    found = {way: merge(hours.of(way).rollups) for way in ways}
+    together = merge(list(found.values()))
+    if not found[Direction.UNKNOWN].measured:
+        del found[Direction.UNKNOWN]
+    return tuple(
+        _profile(way, rollup, bin_mps, pace_width_mps, limit_mps)
+        for way, rollup in [*found.items(), (None, together)]
+    )
+
+
 def speed_profiles(
     store: Store,
     sensor: str,
@@ -47,12 +81,11 @@ def speed_profiles(
     pace_width_mps: float,
     limit_mps: float | None = None,
 ) -> tuple[SpeedProfile, ...]:
-    """Profiles of approaching, receding, unknown where there is any, and of all together, in this order."""
-    edges_us = np.array([start_us, end_us], np.int64)
-    found = speed_rollups(store, sensor, edges_us)
+    """Profiles of a stretch of time: see `profiles_of`."""
+    rolled = speed_rollups(store, sensor, np.array([start_us, end_us], np.int64))
     return tuple(
         _profile(way, rollups[0], bin_mps, pace_width_mps, limit_mps)
-        for way, rollups in found.items()
+        for way, rollups in rolled.items()
         if way is not Direction.UNKNOWN or rollups[0].measured
     )
 
@@ -63,12 +96,15 @@ def speed_rollups(
     """Roll-ups of each interval between the edges, by direction and all together."""
     start_us, end_us = int(edges_us[0]), int(edges_us[-1])
     ways: tuple[Direction | None, ...] = (Direction.APPROACHING, Direction.RECEDING, Direction.UNKNOWN, None)
-    pairs = [(int(a), int(b)) for a, b in pairwise(edges_us)]
+    pairs = list(pairwise(edges_us.tolist()))
+    rolled: dict[Direction | None, tuple[Rollup, ...]] = {}
     if log.are_whole_hours(edges_us):
         hourly = log.hourly_speeds(store, sensor, start_us, end_us)
-        return {way: tuple(hourly.of(way).between(*pair) for pair in pairs) for way in ways}
+        for way in ways:
+            hours = hourly.of(way)
+            rolled[way] = tuple(hours.between(*pair) for pair in pairs)
+        return rolled
     passages = log.passage_arrays(store, sensor, start_us, end_us)
-    rolled: dict[Direction | None, tuple[Rollup, ...]] = {}
     for way in ways:
         own = passages.of(way)
         umps = np.round(np.nan_to_num(own.speed_mps, nan=-1.0) * _UMPS).astype(np.int64)
@@ -77,16 +113,17 @@ def speed_rollups(
     return rolled
 
 
-def clock_hours(
-    store: Store, sensor: str, start_us: int, end_us: int, zone: tzinfo
-) -> tuple[SpeedSummary, ...]:
+def speeds_along(hours: HourlySpeeds, edges_us: IntArray) -> tuple[SpeedSummary, ...]:
+    """Summaries of all speeds between edges that lie on hours."""
+    pairs = pairwise(edges_us.tolist())
+    return tuple(summary_of(hours.between(start_us, end_us)) for start_us, end_us in pairs)
+
+
+def clock_hours(hours: HourlySpeeds, zone: tzinfo) -> tuple[SpeedSummary, ...]:
     """Summaries of all speeds by hour of the local clock, 24 of them."""
-    edges_us = cut(start_us, end_us, Every.HOUR, zone)
-    rolled = speed_rollups(store, sensor, edges_us)[None]
-    hours = [from_us(int(edge), zone).hour for edge in edges_us[:-1]]
+    clock = calendar(hours.hour_us, zone).hour
     return tuple(
-        summary_of(merge([one for at, one in zip(hours, rolled, strict=True) if at == hour]))
-        for hour in range(24)
+        summary_of(merge([hours.rollups[i] for i in np.flatnonzero(clock == hour)])) for hour in range(24)
     )
 
 

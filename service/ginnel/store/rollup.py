@@ -94,9 +94,9 @@ def roll_up(speed_umps: IntArray) -> Rollup:
 def merge(rollups: Sequence[Rollup]) -> Rollup:
     """Roll-up of all passages together; merging none gives one of no passages."""
     cells = np.frombuffer(b"".join(one.histogram for one in rollups), _CELL)
-    bins, which = np.unique(cells["bin"], return_inverse=True)
-    n = np.zeros(len(bins), np.int64)
-    np.add.at(n, which, cells["n"])
+    total = np.bincount(cells["bin"], weights=cells["n"])  # sums of whole numbers, exact up to 2^53
+    bins = np.flatnonzero(total)
+    n = total[bins].astype(np.int64)
     return Rollup(
         count=sum(one.count for one in rollups),
         measured=sum(one.measured for one in rollups),

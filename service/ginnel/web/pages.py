@@ -119,7 +119,8 @@ def trust() -> str:
     asked = ask()
     view = asked.view()
     found = trust_answer.look(asked.store, view, asked.now_us)
-    return show("trust.html", questions.TRUST, asked, view, charts=True, trust=found)
+    odd = trust_answer.oddities(asked.store, view, asked.now_us)
+    return show("trust.html", questions.TRUST, asked, view, charts=True, trust=found, odd=odd)
 
 
 @pages.get("/take-away")

@@ -8,7 +8,7 @@ import numpy as np
 
 from ginnel import reports
 from ginnel.reports import overview as about
-from ginnel.reports.flow import Flow, Total, TypicalWeek, Usual, typical_week
+from ginnel.reports.flow import Flow, Total, TypicalWeek, Usual, joined, typical_week_of
 from ginnel.reports.flow import flow as flow_of
 from ginnel.reports.flow import total as total_of
 from ginnel.reports.flow import usual as usual_of
@@ -71,15 +71,17 @@ def look(store: Store, view: View, now_us: int) -> Busy:
     """Ask the reports how busy it was; what is still to come is no gap."""
     sensor, every = view.sensor.name, view.every
     edges_us = reports.cut(view.start_us, view.end_us, every, view.zone)
-    found = flow_of(store, sensor, edges_us)
-    day_edges_us = np.array([view.start_us, view.end_us], np.int64)
+    # the hours are read once; whatever is shown is made of them
+    hour_edges_us = reports.cut(int(edges_us[0]), int(edges_us[-1]), reports.Every.HOUR, view.zone)
+    hours = flow_of(store, sensor, hour_edges_us)
+    own = joined(hours, reports.cut(view.start_us, view.end_us, reports.Every.HOUR, view.zone))
     return Busy(
         view=view,
         every=every,
-        intervals=_intervals(found, usual_of(store, sensor, edges_us, every, view.zone)),
-        total=total_of(flow_of(store, sensor, day_edges_us)),
+        intervals=_intervals(joined(hours, edges_us), usual_of(store, sensor, edges_us, every, view.zone)),
+        total=total_of(own),
         gaps=about.unheard(store, sensor, view.start_us, min(view.end_us, max(now_us, view.start_us))),
-        week=typical_week(store, sensor, view.start_us, view.end_us, view.zone) if view.n_days >= 7 else None,
+        week=typical_week_of(own, view.zone) if view.n_days >= 7 else None,
     )
 
 

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 from ginnel import reports
 from ginnel.reports.speed_profile import (
     SpeedProfile,
     clock_hours,
-    speed_profiles,
-    speed_rollups,
-    summary_of,
+    profiles_of,
+    read_speeds,
+    speeds_along,
 )
 from ginnel.stats import SpeedSummary
 from ginnel.store import Store
@@ -60,28 +61,20 @@ class Fast:
 def look(store: Store, view: View, limit_mps: float | None) -> Fast:
     """Ask the reports how fast they went."""
     pace_width_mps, bin_mps = FOOT if view.sensor.max_speed_mps <= 10 else ROAD
-    sensor = view.sensor.name
-    profiles = speed_profiles(
-        store,
-        sensor,
-        view.start_us,
-        view.end_us,
-        bin_mps=bin_mps,
-        pace_width_mps=pace_width_mps,
-        limit_mps=limit_mps,
-    )
+    hours = read_speeds(store, view.sensor.name, view.start_us, view.end_us, view.zone)
     edges_us = reports.cut(view.start_us, view.end_us, view.every, view.zone)
-    rolled = speed_rollups(store, sensor, edges_us)[None]
     return Fast(
         view=view,
         every=view.every,
         bin_mps=bin_mps,
         pace_width_mps=pace_width_mps,
         limit_mps=limit_mps,
-        profiles=profiles,
+        profiles=profiles_of(hours, bin_mps=bin_mps, pace_width_mps=pace_width_mps, limit_mps=limit_mps),
         along=tuple(
-            Moment(start_us=int(a), end_us=int(b), summary=summary_of(one))
-            for a, b, one in zip(edges_us[:-1], edges_us[1:], rolled, strict=True)
+            Moment(start_us=start_us, end_us=end_us, summary=summary)
+            for (start_us, end_us), summary in zip(
+                pairwise(edges_us.tolist()), speeds_along(hours, edges_us), strict=True
+            )
         ),
-        by_hour=clock_hours(store, sensor, view.start_us, view.end_us, view.zone),
+        by_hour=clock_hours(hours, view.zone),
     )

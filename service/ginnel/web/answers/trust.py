@@ -12,12 +12,13 @@ from ginnel.reports.flow import flow as flow_of
 from ginnel.reports.flow import total as total_of
 from ginnel.store import Store
 from ginnel.web.view import View
-from ginnel.words import Condition, HealthSample
+from ginnel.words import US_PER_S, Condition, HealthSample
 
 #: Pages list at most so many gaps, the longest ones.
 MOST_GAPS = 50
 #: What does not fit is looked for in so many days at most; it is held against the twelve weeks before.
 MOST_DAYS_ODD = 100
+HISTORY_US = 12 * 7 * 86_400 * US_PER_S
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -33,7 +34,6 @@ class Trust:
     facts: reports.SensorFacts
     troubles: tuple[Condition, ...]
     course: tuple[HealthSample, ...]  # single minutes at even steps
-    odd: tuple[reports.Finding, ...]
 
     @property
     def coverage(self) -> tuple[tuple[int, int, float], ...]:
@@ -64,7 +64,15 @@ def look(store: Store, view: View, now_us: int) -> Trust:
         course=tuple(
             one for one in health_course(store, sensor, view.start_us, view.end_us) if one is not None
         ),
-        odd=reports.unusual(store, sensor, view.start_us, end_us, view.zone)
-        if view.start_us < end_us and view.n_days <= MOST_DAYS_ODD
-        else (),
     )
+
+
+def oddities(store: Store, view: View, now_us: int) -> tuple[reports.Finding, ...]:
+    """Hours that do not fit the twelve weeks before and the view itself; none where too much is asked for."""
+    end_us = min(view.end_us, max(now_us, view.start_us))
+    if view.start_us >= end_us or view.n_days > MOST_DAYS_ODD:
+        return ()
+    first_us = view.start_us - HISTORY_US
+    hours = flow_of(store, view.sensor.name, reports.cut(first_us, end_us, reports.Every.HOUR, view.zone))
+    found = reports.unusual_of(view.sensor.name, hours, view.zone)
+    return tuple(one for one in found if one.end_us > view.start_us)

@@ -277,7 +277,7 @@ def trust_(query: models.ViewQuery) -> Any:
         conditions=[_condition(one, asked) for one in found.troubles],
         findings=[
             models.Finding(kind=one.kind.value, **_span(one.start_us, one.end_us, asked), reason=one.reason)
-            for one in found.odd
+            for one in trust.oddities(asked.store, view, asked.now_us)
         ],
         chain_versions=list(found.facts.chain_versions),
     )
