@@ -130,15 +130,18 @@ def spans(
 
 def extent_us(store: Store, sensor: str | Collection[str] | None = None) -> tuple[int, int] | None:
     """Find the first and the last moment the log knows anything of, half-open; None when empty."""
-    heard = select(func.min(SpanRow.started_us), func.max(SpanRow.ended_us))
-    crossed = select(func.min(PassageRow.crossed_us), func.max(PassageRow.crossed_us) + 1)
+    bounds: list[tuple[int, int]] = []
     with store.reading() as connection:
-        bounds: list[tuple[int, int]] = []
         for sensor_id, _ in known_sensors(connection, sensor):
-            for query, row in ((heard, SpanRow), (crossed, PassageRow)):
-                first, last = connection.execute(query.where(row.sensor_id == sensor_id)).one()
-                if first is not None:
-                    bounds.append((first, last))
+            # one end at a time, so that the key leads to it; both at once would walk through all passages
+            for first, last, own in (
+                (SpanRow.started_us, SpanRow.ended_us, SpanRow.sensor_id == sensor_id),
+                (PassageRow.crossed_us, PassageRow.crossed_us, PassageRow.sensor_id == sensor_id),
+            ):
+                start_us = connection.execute(select(func.min(first)).where(own)).scalar_one()
+                end_us = connection.execute(select(func.max(last)).where(own)).scalar_one()
+                if start_us is not None:
+                    bounds.append((start_us, end_us if last is SpanRow.ended_us else end_us + 1))
     if not bounds:
         return None
     return min(first for first, _ in bounds), max(last for _, last in bounds)
