@@ -103,7 +103,7 @@ def test_a_folder_misses_nothing_at_all(tmp_path: Path, record_property: Tell) -
     for folder in (calm, killed):
         folder.mkdir()
         write_settings(folder, FOLDER.replace("captures", "../captures"))
-    n_files = 8 if KILLS <= 10 else 40
+    n_files = 5 if KILLS <= 10 else 40
     for minute in range(n_files):  # unbroken, but for one hole
         write_minute(tmp_path / "captures", minute + (minute > n_files // 2), seed=minute % 8)
     done = subprocess.run(

@@ -1,4 +1,4 @@
-"""Memory, threads and files of a daemon that runs on and on, for GINNEL_HOURS (1 without it)."""
+"""Memory, threads and files of a daemon that runs on and on, for GINNEL_HOURS (a half without it)."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ import pytest
 from tests.system.conftest import environment
 
 ROOT = Path(__file__).parents[2]
-HOURS = float(os.environ.get("GINNEL_HOURS", "1"))
+HOURS = float(os.environ.get("GINNEL_HOURS", "0.5"))
 
 
 @pytest.mark.slow
