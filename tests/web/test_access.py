@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import html
+import http.client
 import logging
 import re
 import socket
+import urllib.parse
 import urllib.request
 from collections.abc import Iterator
 from dataclasses import replace
@@ -215,6 +217,32 @@ def test_behind_tls_cookies_keep_to_it_and_only_known_names_are_answered(guarded
     assert "Secure" in client.get("/login", headers={"Host": "counts.example.org"}).headers["Set-Cookie"]
     assert client.get("/login", headers={"Host": "elsewhere.example"}).status_code == 400
     app.extensions["ginnel.store"].close()
+
+
+def test_behind_a_proxy_addresses_have_its_path_and_guesses_are_of_the_client(
+    guarded: Settings, caplog: pytest.LogCaptureFixture
+) -> None:
+    web = guarded.web.model_copy(update={"public_url": "https://counts.example.org/inside"})
+    with serving(guarded.model_copy(update={"web": web})) as server:
+        host, port = server.address.removeprefix("http://").rstrip("/").split(":")
+        asked = http.client.HTTPConnection(host, int(port), timeout=20)
+        outside = {"Host": "counts.example.org", "X-Forwarded-Proto": "https", "X-Forwarded-For": "192.0.2.7"}
+        asked.request("GET", "/inside/busy?show=week", headers=outside)
+        answer = asked.getresponse()
+        answer.read()
+        assert answer.headers["Location"] == "/inside/login?next=/busy?show%3Dweek"
+        asked.request("GET", answer.headers["Location"], headers=outside)
+        page = asked.getresponse()
+        token = re.search(r'csrf_token" value="([^"]+)"', page.read().decode())
+        assert token is not None
+        form = urllib.parse.urlencode({"csrf_token": token[1], "name": "hilda", "password": "guess"})
+        cookie = page.headers["Set-Cookie"].split(";")[0]
+        kind = {"Content-Type": "application/x-www-form-urlencoded", "Cookie": cookie}
+        kind["Referer"] = "https://counts.example.org/inside/login"
+        asked.request("POST", "/inside/login", body=form, headers=outside | kind)
+        assert asked.getresponse().status == 401
+        asked.close()
+    assert "login refused, from 192.0.2.7" in caplog.text
 
 
 def test_every_answer_is_hardened(app: Flask, client: FlaskClient) -> None:
