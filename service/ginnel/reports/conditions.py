@@ -3,17 +3,12 @@
 from __future__ import annotations
 
 from ginnel.store import Store
-from ginnel.store.health import conditions, health_near, open_conditions
+from ginnel.store.health import conditions, health_near
 from ginnel.words import Condition, HealthSample
 
 #: So many readings draw a line that looks like all of them.
 MOST_READINGS = 300
 _MINUTE_US = 60_000_000
-
-
-def conditions_now(store: Store) -> tuple[Condition, ...]:
-    """What is wrong now, the oldest first."""
-    return tuple(open_conditions(store))
 
 
 def conditions_during(store: Store, sensor: str, start_us: int, end_us: int) -> tuple[Condition, ...]:

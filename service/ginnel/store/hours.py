@@ -54,7 +54,7 @@ def _made(store: Store, sensor_id: int, before_hour: int) -> int:
         with store.writing() as connection:
             # the lock that writers of spans and passages take too: no mark can slip through in between
             connection.execute(select(SensorRow.id).where(SensorRow.id == sensor_id).with_for_update())
-            hours = stale_hours(connection, sensor_id, 0, before_hour)[:_HOURS_AT_ONCE]
+            hours = stale_hours(connection, sensor_id, 0, before_hour, _HOURS_AT_ONCE)
             if not hours:
                 return n_made
             put_hours(connection, sensor_id, sorted(set(hours) - final_hours(connection, sensor_id, hours)))
@@ -108,12 +108,14 @@ def stored_hours(connection: Connection, sensor_id: int, first: int, last: int) 
     )
 
 
-def stale_hours(connection: Connection, sensor_id: int, first: int, last: int) -> list[int]:
-    """Hours of [first, last) that are marked, in order."""
+def stale_hours(
+    connection: Connection, sensor_id: int, first: int, last: int, most: int | None = None
+) -> list[int]:
+    """Hours of [first, last) that are marked, in order, ``most`` of them where that is given."""
     marked = select(StaleHourRow.hour).where(
         StaleHourRow.sensor_id == sensor_id, StaleHourRow.hour >= first, StaleHourRow.hour < last
     )
-    return list(connection.execute(marked.order_by(StaleHourRow.hour)).scalars())
+    return list(connection.execute(marked.order_by(StaleHourRow.hour).limit(most)).scalars())
 
 
 def final_hours(connection: Connection, sensor_id: int, hours: Sequence[int]) -> set[int]:

@@ -9,16 +9,14 @@ import numpy as np
 
 from ginnel import reports
 from ginnel.reports import overview as about
-from ginnel.reports.conditions import conditions_now
 from ginnel.reports.flow import Total
 from ginnel.reports.flow import flow as flow_of
 from ginnel.reports.flow import total as total_of
 from ginnel.reports.passages import PassageEntry
+from ginnel.reports.status import SensorStatus, status
 from ginnel.store import Store
 from ginnel.words import US_PER_S, Condition, Direction, Sensor
 
-#: The daemon stores how far it got every few seconds; after this long without, nobody is listening.
-SILENT_AFTER_S = 120
 HOUR_US = 3600 * US_PER_S
 N_LATEST = 5
 
@@ -55,22 +53,24 @@ class Now:
 
 def look(store: Store, sensors: Sequence[Sensor], now_us: int) -> Now:
     """Ask how each sensor is doing."""
+    found = status(store, now_us, [sensor.name for sensor in sensors])
+    states = {one.sensor: one for one in found.sensors}
     return Now(
-        places=tuple(_place(store, sensor, now_us) for sensor in sensors), troubles=conditions_now(store)
+        places=tuple(_place(store, sensor, states[sensor.name], now_us) for sensor in sensors),
+        troubles=found.conditions,
     )
 
 
-def _place(store: Store, sensor: Sensor, now_us: int) -> Place:
+def _place(store: Store, sensor: Sensor, state: SensorStatus, now_us: int) -> Place:
     extent = about.extent_us(store, sensor.name)
     until_us = None if extent is None else extent[1]
-    listening = until_us is not None and now_us - until_us < SILENT_AFTER_S * US_PER_S
-    end_us = now_us if listening or until_us is None else until_us
+    end_us = now_us if state.is_listened_to or until_us is None else until_us
     edges_us = np.array([end_us - HOUR_US, end_us], np.int64)
     return Place(
         sensor=sensor,
         heard_until_us=until_us,
-        is_listening=listening,
+        is_listening=state.is_listened_to,
         hour=total_of(flow_of(store, sensor.name, edges_us)),
-        hour_end_us=None if listening else until_us,
+        hour_end_us=None if state.is_listened_to else until_us,
         latest=reports.latest_passages(store, N_LATEST, sensor.name),
     )
