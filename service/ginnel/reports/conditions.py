@@ -7,7 +7,7 @@ from ginnel.store.health import conditions, health_near
 from ginnel.words import Condition, HealthSample
 
 #: So many readings draw a line that looks like all of them.
-MOST_READINGS = 300
+MOST_READINGS = 200
 _MINUTE_US = 60_000_000
 
 
@@ -18,7 +18,7 @@ def conditions_during(store: Store, sensor: str, start_us: int, end_us: int) -> 
 
 
 def health_course(store: Store, sensor: str, start_us: int, end_us: int) -> tuple[HealthSample | None, ...]:
-    """Give single minutes of health at even steps, 300 at most; None where there is no reading near."""
+    """Give single minutes of health at even steps, 200 at most; None where there is no reading near."""
     step_us = max((end_us - start_us) // MOST_READINGS, 5 * _MINUTE_US)
     moments_us = list(range(start_us, end_us, step_us))
     return tuple(health_near(store, sensor, moments_us, step_us))

@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import errno
+import importlib
 import ipaddress
 import logging
 import socket
+import threading
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
 from urllib.parse import urlsplit
@@ -34,6 +36,10 @@ class Server:
 
     def run(self) -> None:
         """Answer until interrupted."""
+        # the chart library takes a second to load, or three on a small board: not at somebody's first visit
+        threading.Thread(
+            target=importlib.import_module, args=("ginnel.web.drawing.busy",), daemon=True
+        ).start()
         self._server.run()
 
     def close(self) -> None:

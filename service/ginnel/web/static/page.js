@@ -3,13 +3,17 @@
 (() => {
   const dark = window.matchMedia("(prefers-color-scheme: dark)");
   const page = document.querySelector("[data-charts]");
+  // This script runs before the large one of the charts, so that both are under way at once.
+  const loaded = new Promise((done) => document.addEventListener("DOMContentLoaded", done, { once: true }));
 
   const draw = async () => {
     const scheme = dark.matches ? "dark" : "light";
     try {
       const answer = await fetch(`${page.dataset.charts}&scheme=${scheme}`);
       if (!answer.ok) throw new Error(`the server said ${answer.status}`);
-      for (const [id, item] of Object.entries(await answer.json())) {
+      const items = await answer.json();
+      await loaded;
+      for (const [id, item] of Object.entries(items)) {
         const place = document.getElementById(id);
         if (place === null) continue;
         place.replaceChildren();
@@ -45,6 +49,8 @@
     }
   };
 
+  // on a phone the row of questions is longer than the screen
+  document.querySelector(".questions [aria-current]")?.scrollIntoView({ block: "nearest", inline: "center" });
   if (page !== null) {
     dark.addEventListener("change", draw);
     draw();
