@@ -1,7 +1,7 @@
 """An invented day at an invented place: captures, the real chain over them, and how well it counted.
 
-The corridor is recorded from seven to seven, with twelve minutes that nobody recorded, the yard gate in the
-morning only. An hour is in a file. Who walks there is drawn from a seed, so that everybody sees the same day.
+The corridor is recorded from seven to seven, with twelve minutes that nobody recorded, the yard gate early
+in the morning only. An hour is in a file. Who walks there is drawn from a seed: everybody sees the same day.
 """
 
 from __future__ import annotations
@@ -45,7 +45,7 @@ HOURS = {
         (600, 60, 4, 0.2),
         (660, 60, 1, 0.3),
     ),
-    "yard-gate": ((0, 60, 7, 0.8), (60, 48, 12, 0.7), (120, 60, 8, 0.55)),
+    "yard-gate": ((0, 60, 7, 0.8), (60, 48, 12, 0.7)),
 }
 EDGE_S = 15.0
 CHAIN_WORK = 6.0  # reading a second costs about so many times what making it does; only the bar asks
