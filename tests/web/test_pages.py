@@ -8,7 +8,7 @@ import pytest
 from flask.testing import FlaskClient
 from tests.web.conftest import tables_of
 
-from ginnel.config import load_settings
+from ginnel.config import Settings, load_settings
 from ginnel.errors import StoreError
 from ginnel.store import open_store
 from ginnel.web.app import create_app
@@ -181,3 +181,15 @@ def test_a_store_that_is_not_there_is_one_line(tmp_path: Path) -> None:
     (tmp_path / "ginnel.toml").write_text("", "utf-8")
     with pytest.raises(StoreError, match="there is no store"):
         create_app(load_settings(tmp_path / "ginnel.toml"))
+
+
+def test_units_locale_and_limit_are_those_of_the_settings(settings: Settings) -> None:
+    web = settings.web.model_copy(update={"units": "mph", "locale": "de", "speed_limit": 3.0})
+    app = create_app(settings.model_copy(update={"web": web}))
+    with app.test_client() as client:
+        text = words(client.get(f"/fast?{WHAT}").text)
+        # the median is 1.355 m/s: 1.355 / 0.44704 = 3.03 mph; 4 of 7 are above 3 mph, 1.341 m/s
+        assert "Half passed at up to 3,0 mph" in text
+        assert "57,1 % were faster than 3,0 mph" in text
+        assert "Montag 2. M\N{LATIN SMALL LETTER A WITH DIAERESIS}rz 2026" in text
+    app.extensions["ginnel.store"].close()
