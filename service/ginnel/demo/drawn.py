@@ -36,7 +36,8 @@ DRAWN = "drawn from an invented weekly pattern, not measured"
 WEEKS = 8
 #: Nobody crosses so close to the edge of an hour: a passage lies in its span as a whole.
 EDGE_US = 5 * US_PER_S
-HEALTH_EVERY_US = 15 * 60 * US_PER_S
+HOUR_US = 3600 * US_PER_S
+HEALTH_EVERY_US = HOUR_US // 4
 
 #: Passages an hour on a weekday, from midnight on; those who come in, and those who leave.
 COMING = (0, 0, 0, 0, 0, 1, 6, 34, 62, 30, 16, 14, 15, 34, 20, 14, 10, 7, 4, 2, 1, 0, 0, 0)
@@ -103,10 +104,11 @@ def _passages(
     start_us: int, end_us: int, share: float, mean_mps: float, zone: ZoneInfo, chance: np.random.Generator
 ) -> Iterator[Passage]:
     """Draw passages hour by hour, at random within each."""
-    edges_us = [*range(start_us, end_us, 3600 * US_PER_S), end_us]
+    first_us = start_us - start_us % HOUR_US + HOUR_US
+    edges_us = [start_us, *range(first_us, end_us, HOUR_US), end_us]
     for hour_us, next_us in pairwise(edges_us):
         local = from_us(hour_us, zone)
-        size = share * WEEKDAYS[local.weekday()] * (next_us - hour_us) / (3600 * US_PER_S)
+        size = share * WEEKDAYS[local.weekday()] * (next_us - hour_us) / HOUR_US
         for way, pattern in ((Direction.APPROACHING, COMING), (Direction.RECEDING, LEAVING)):
             n = int(chance.poisson(size * pattern[local.hour]))
             crossed_us = chance.integers(
