@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections import deque
 
 import numpy as np
@@ -13,8 +14,9 @@ from ginnel.passages.explain import explain
 from ginnel.passages.measure import measure
 from ginnel.passages.pace import pace_of
 from ginnel.passages.site import Site
+from ginnel.passages.stops import LONGEST_STOP_S, Held, joined, leg_of, stopped_leg
 from ginnel.passages.stories import Told, tell
-from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor
+from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor, Story
 
 #: Named by every passage; changes whenever the same samples could give other passages.
 CHAIN_VERSION = "2"
@@ -45,11 +47,13 @@ class Chain:
         self._n_samples = 0
         self._crossed_us: deque[int] = deque(maxlen=64)
         self._given: deque[tuple[float, int]] = deque(maxlen=16)
+        self._held: list[Held] = []
 
     @property
     def settled_us(self) -> int:
-        """Stretches of activity that began before this have all been read."""
-        return min(self._time_us(self._activity.settled_frame_idx), self.listened_until_us)
+        """Stretches of activity that began before this have all been read, and their passages given out."""
+        held_us = (min(held.passage.started_us, held.passage.crossed_us) for held in self._held)
+        return min(self._time_us(self._activity.settled_frame_idx), self.listened_until_us, *held_us)
 
     @property
     def listened_until_us(self) -> int:
@@ -65,29 +69,44 @@ class Chain:
         """End the span."""
         passages = self._passages(self._front.finish())
         for stretch in self._activity.finish():
-            passages += self._read(stretch)
-        return passages
+            self._read(stretch)
+        return passages + self._released(math.inf)
 
     def _passages(self, batches: list[SpectrumBatch]) -> list[Passage]:
-        return [
-            passage
-            for batch in batches
-            for stretch in self._activity.push(batch)
-            for passage in self._read(stretch)
-        ]
+        passages: list[Passage] = []
+        for batch in batches:
+            for stretch in self._activity.push(batch):
+                self._read(stretch)
+            passages += self._released(self._activity.settled_frame_idx)
+        return passages
 
-    def _read(self, stretch: Stretch) -> list[Passage]:
+    def _read(self, stretch: Stretch) -> None:
+        """Find the passages of a stretch, and hold each while it may yet turn out to be a stop."""
         cluster = Cluster(
             self._site, stretch.first_frame_idx, stretch.power, stretch.background, self._front.watched
         )
-        told = tell(self._site, explain(cluster))
-        passages = []
-        for one in told:
-            crossed_frame = one.one.mover.crossed_s * self._site.frame_rate_hz
-            if self._belongs(stretch, one, crossed_frame):
-                passages.append(self._passage(stretch, cluster, one, crossed_frame))
-                self._given.append((crossed_frame, one.one.mover.sign))
-        return passages
+        for told in tell(self._site, explain(cluster)):
+            crossed_frame = told.one.mover.crossed_s * self._site.frame_rate_hz
+            if not self._belongs(stretch, told, crossed_frame):
+                continue
+            self._given.append((crossed_frame, told.one.mover.sign))
+            passage = self._passage(stretch, cluster, told, crossed_frame)
+            self._hold(Held(passage, leg_of(stretch.first_frame_idx, told.one)))
+
+    def _hold(self, new: Held) -> None:
+        """Hold a passage; the rest of one who stopped becomes one with what came before."""
+        before = stopped_leg(self._site, [held.leg for held in self._held], new.leg)
+        if before is None or {new.passage.story, self._held[before].passage.story} != {Story.PASSAGE}:
+            self._held.append(new)
+        else:
+            self._held[before] = joined(self._held[before], new)
+
+    def _released(self, settled_frame_idx: float) -> list[Passage]:
+        """Passages whose continuation would have been read by now."""
+        stop = LONGEST_STOP_S * self._site.frame_rate_hz if self._site.body.may_turn else 0.0
+        out = [held for held in self._held if held.leg.last_frame + stop < settled_frame_idx]
+        self._held = [held for held in self._held if held.leg.last_frame + stop >= settled_frame_idx]
+        return [held.passage for held in out]
 
     def _belongs(self, stretch: Stretch, told: Told, crossed_frame: float) -> bool:
         """Whether a mover belongs to this stretch, or to its neighbour beyond a cut.

@@ -15,6 +15,7 @@ from ginnel.passages.explained import Explained, claim_of
 from ginnel.passages.fit import Fit, log_prior, refine, score_of
 from ginnel.passages.reunite import reunite
 from ginnel.passages.settle import best_fit, polished, settle, slide
+from ginnel.passages.split import split
 from ginnel.words import FloatArray
 
 #: Nats that a mover must gain. A cluster offers some 10^5 distinguishable movers, so noise alone
@@ -56,7 +57,8 @@ def explain(cluster: Cluster) -> list[Explained]:
             break
     if len(found) > 1:
         found = _without_leftovers(cluster, [_again(cluster, one) for one in found])
-    return sorted(reunite(cluster, found), key=lambda one: one.mover.crossed_s)
+    whole = [part for one in reunite(cluster, found) for part in split(cluster, one)]
+    return sorted(whole, key=lambda one: one.mover.crossed_s)
 
 
 def _again(cluster: Cluster, one: Explained) -> Explained:

@@ -7,9 +7,9 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ginnel.passages.explain import LEAST_SCORE
 from ginnel.passages.explained import Explained
 from ginnel.passages.site import NEPERS_PER_DB, Site
+from ginnel.passages.stops import STAYS_DB, ends_abruptly, leg_of, near_excess_db, stopped_leg
 from ginnel.words import Story
 
 #: A credible path: doors, curtains and hands stay below it.
@@ -17,14 +17,12 @@ _LEAST_PATH_M = 1.5
 _LEAST_VEHICLE_PATH_M = 5.0
 #: Where the beam still hears well, for mountings that look past the sensor line.
 _WELL_HEARD = -10.0 * NEPERS_PER_DB
-#: Two legs are one person turning if speed and level agree like this and little time lies between.
-_SAME_SPEED, _SAME_LEVEL_DB, _TURN_S = 0.2, 2.5, 5.0
+#: Two legs are one person turning if the speeds agree and little time lies between.
+_SAME_SPEED, _TURN_S = 0.2, 5.0
 #: Where a mover turns far from the sensor, both legs end at the same place within this.
 _SAME_PLACE_M, _LIKE_LEVEL_DB, _FAR_TURN_S = 2.0, 6.0, 4.0
 #: Legs of one who turns may seem to overlap by this much: frames are long.
 _MEETING_S = -0.8
-#: A far leg is abrupt if silence costs it this share of its score.
-_ABRUPT_SHARE = 0.03
 #: A bend this strong, against the body's strongest, is an end of it and no mere leftover.
 _STRONG_PART = 0.2
 #: Score of a piece, against the stronger mover's, below which it is a leftover: any, and a short one.
@@ -35,6 +33,10 @@ _LIMB_TOGETHER, _LIMB_S, _LIMB_DB, _LIMB_SPEED = 0.6, 1.5, 6.0, 0.25
 _BEHIND_OFFSETS, _BEHIND_DB = 1.0, 6.0
 #: Slower than this, both ways at once: someone who stands and sways.
 _LOITER_MPS = 0.6
+#: Who walks slowly is explained half as well the other way round, who sways nearly as well either way.
+_WAYLESS_SHARE = 0.6
+#: Less than these nats between both ways: it may as well be the other one.
+_UNDECIDED = 25.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,8 +55,8 @@ def tell(site: Site, movers: list[Explained]) -> list[Told]:
     for one in bodies:
         if any(_loiter_together(one, other) for other in bodies):
             stories[id(one)] = Story.FIDGET
-    passing = [one for one in bodies if stories[id(one)] is Story.PASSAGE]
-    for first, second in _turning_pairs(site, passing) if site.body.may_turn else ():
+    going = [one for one in bodies if stories[id(one)] is not Story.FIDGET]
+    for first, second in _turning_pairs(site, going) if site.body.may_turn else ():
         stories[id(first)] = stories[id(second)] = Story.TURN_BACK
     return [
         Told(one, stories[id(one)], any(other is not one and _together(one, other) for other in bodies))
@@ -69,7 +71,7 @@ def _one_for_each_body(site: Site, movers: list[Explained]) -> list[Explained]:
     for one in sorted(merged, key=lambda body: -body.fit.score):
         if not any(_is_leftover(site, one, other) for other in kept):
             kept.append(one)
-    return _joined(sorted(kept, key=lambda one: one.mover.crossed_s))
+    return _joined(site, sorted(kept, key=lambda one: one.mover.crossed_s))
 
 
 def _bodies(site: Site, movers: list[Explained]) -> list[list[Explained]]:
@@ -146,15 +148,18 @@ def _is_behind(site: Site, weak: Explained, strong: Explained) -> bool:
     )
 
 
-def _joined(movers: list[Explained]) -> list[Explained]:
+def _joined(site: Site, movers: list[Explained]) -> list[Explained]:
     """Someone who stops and goes on is one: join two legs of one way that meet."""
     out: list[Explained] = []
     for one in movers:
-        earlier = next((other for other in out if _goes_on(other, one)), None)
+        stopped = stopped_leg(site, [leg_of(0, other) for other in out], leg_of(0, one))
+        earlier = next((other for i, other in enumerate(out) if i == stopped or _goes_on(other, one)), None)
         if earlier is None:
             out.append(one)
             continue
-        main, part = (one, earlier) if one.near_m < earlier.near_m else (earlier, one)
+        # who approaches crosses in the last leg, who leaves in the first
+        is_last = one.mover.sign > 0 and one.fit.score > _PIECE_SHARE * earlier.fit.score
+        main, part = (one, earlier) if is_last else (earlier, one)
         out[out.index(earlier)] = replace(
             main,
             first_frame=min(main.first_frame, part.first_frame),
@@ -173,11 +178,16 @@ def _goes_on(earlier: Explained, later: Explained) -> bool:
 
 
 def _single_story(site: Site, one: Explained) -> Story:
-    if one.far_m - one.near_m < _least_path_m(site):
+    if one.far_m - one.near_m < _least_path_m(site) or _sways(one):
         return Story.FIDGET
     if one.near_m > _line_reach_m(site):
         return Story.TURN_BACK
     return Story.PASSAGE
+
+
+def _sways(one: Explained) -> bool:
+    """Whether a slow line does not tell its way: somebody stands there and moves about."""
+    return one.mover.speed_mps < _LOITER_MPS and one.rival_score > _WAYLESS_SHARE * one.fit.score
 
 
 def _least_path_m(site: Site) -> float:
@@ -220,19 +230,19 @@ def _turning_pairs(site: Site, movers: list[Explained]) -> list[tuple[Explained,
 def _turns(site: Site, first: Explained, second: Explained) -> bool:
     """Whether two movers are the two legs of one that turns, near the sensor or far from it."""
     a, b = first.mover, second.mover
-    if a.sign == b.sign or abs(np.log(first.mean_speed_mps / second.mean_speed_mps)) > _SAME_SPEED:
+    is_undecided = second.fit.score - second.rival_score < _UNDECIDED
+    if a.sign == b.sign and not is_undecided:
+        return False
+    if abs(np.log(first.mean_speed_mps / second.mean_speed_mps)) > _SAME_SPEED:
         return False
     between_s = (second.first_frame - first.last_frame) / site.frame_rate_hz
-    apart_db = _levels_apart_db(first, second)
-    if a.sign > 0:
-        return apart_db < _SAME_LEVEL_DB and _MEETING_S < between_s < _TURN_S
+    if a.sign > 0:  # the second leg of one who turned before the sensor line may show no bend
+        stays_db = 0.5 * (near_excess_db(first) + near_excess_db(second))
+        is_like = is_undecided or second.near_m > _line_reach_m(site) or stays_db > STAYS_DB
+        return is_like and _MEETING_S < between_s < _TURN_S
     meets = abs(first.far_m - second.far_m) < _SAME_PLACE_M and _MEETING_S < between_s < _FAR_TURN_S
-    return meets and apart_db < _LIKE_LEVEL_DB and _ends_abruptly(first) and _ends_abruptly(second)
-
-
-def _ends_abruptly(one: Explained) -> bool:
-    """Whether a leg ends far away where it should still be heard: it did not fade, it turned."""
-    return one.lost_far < -max(LEAST_SCORE, _ABRUPT_SHARE * one.fit.score)
+    is_like = _levels_apart_db(first, second) < _LIKE_LEVEL_DB
+    return meets and is_like and ends_abruptly(first) and ends_abruptly(second)
 
 
 def _levels_apart_db(first: Explained, second: Explained) -> float:

@@ -39,16 +39,19 @@ def leg(
     far_m: float = 8.0,
     score: float = 300.0,
     level_db: float = 20.0,
+    near_excess_db: float = 0.0,
     lost_far: float = 0.0,
     site: Site = PATH,
 ) -> Explained:
     """A mover heard from ``far_m`` to ``near_m`` (approaching) or back."""
+    level_by_zone_db = np.full(N_ZONES, level_db)
+    level_by_zone_db[0] += near_excess_db
     mover = Mover(
         crossed_s=crossed_s,
         speed_mps=speed_mps,
         sign=sign,
         offset_m=site.offset_m,
-        level=np.full(N_ZONES, level_db * NEPERS_PER_DB),
+        level=level_by_zone_db * NEPERS_PER_DB,
     )
     ends_s = sorted((crossed_s - sign * far_m / speed_mps, crossed_s - sign * near_m / speed_mps))
     return Explained(
@@ -92,17 +95,21 @@ def test_who_was_never_heard_near_the_sensor_is_no_passage() -> None:
 
 
 def test_who_nears_and_then_leaves_alike_has_turned_back() -> None:
-    # Crossing at 20 s in appearance, turned 1 m before the sensor line, and away again.
-    found = tell(PATH, [leg(20.0, near_m=1.0), leg(20.5, sign=-1, near_m=1.0)])
+    # Crossing at 20 s in appearance, turned 1 m before the sensor line, in full view, and away again.
+    found = tell(PATH, [leg(20.0, near_excess_db=5.0), leg(20.5, sign=-1, near_excess_db=5.0)])
     assert stories(found) == [Story.TURN_BACK, Story.TURN_BACK]
 
 
-def test_two_of_unlike_speed_or_level_who_meet_are_two_passages() -> None:
-    first = leg(20.0)
-    faster = leg(20.5, sign=-1, speed_mps=1.8)
-    louder = leg(20.5, sign=-1, level_db=26.0)
-    assert stories(tell(PATH, [first, faster])) == [Story.PASSAGE] * 2
-    assert stories(tell(PATH, [first, louder])) == [Story.PASSAGE] * 2
+def test_who_leaves_again_without_having_come_near_has_turned_back() -> None:
+    found = tell(PATH, [leg(20.0), leg(17.5, sign=-1, near_m=4.0, far_m=9.0)])
+    assert stories(found) == [Story.TURN_BACK, Story.TURN_BACK]
+
+
+def test_two_who_meet_beside_the_sensor_are_two_passages() -> None:
+    # Both leave the beam there, however alike they are.
+    assert stories(tell(PATH, [leg(20.0), leg(20.5, sign=-1)])) == [Story.PASSAGE] * 2
+    faster = leg(20.5, sign=-1, speed_mps=1.8, near_excess_db=5.0)
+    assert stories(tell(PATH, [leg(20.0, near_excess_db=5.0), faster])) == [Story.PASSAGE] * 2
 
 
 def test_two_who_go_one_way_one_after_the_other_are_two_passages() -> None:
@@ -117,7 +124,12 @@ def test_who_comes_back_after_ten_seconds_is_two_passages() -> None:
 
 def test_a_turn_back_leaves_the_next_walker_alone() -> None:
     found = tell(
-        PATH, [leg(20.0, near_m=1.0), leg(20.5, sign=-1, near_m=1.0), leg(45.0, sign=-1, level_db=14.0)]
+        PATH,
+        [
+            leg(20.0, near_excess_db=5.0),
+            leg(20.5, sign=-1, near_excess_db=5.0),
+            leg(45.0, sign=-1, level_db=14.0),
+        ],
     )
     assert stories(found) == [Story.TURN_BACK, Story.TURN_BACK, Story.PASSAGE]
 
@@ -131,6 +143,32 @@ def test_who_stops_on_the_way_and_goes_on_is_one() -> None:
     assert told.story is Story.PASSAGE
     assert told.one.mover.crossed_s == 26.0
     assert (told.one.first_frame, told.one.last_frame) == (first.first_frame, second.last_frame)
+
+
+def test_who_brakes_stops_and_goes_on_is_one_though_braking_looks_like_a_bend() -> None:
+    # The first leg seems to cross at the stop, 5 m before the sensor; the second comes up out of nothing.
+    first = leg(20.0, near_excess_db=5.0)
+    second = leg(30.0, far_m=5.0, lost_far=-80.0)
+    (told,) = tell(PATH, [first, second])
+    assert (told.story, told.one.mover.crossed_s) == (Story.PASSAGE, 30.0)
+
+
+def test_who_stops_on_the_way_out_crossed_before_the_stop() -> None:
+    first = leg(20.0, sign=-1, far_m=6.0, lost_far=-80.0)
+    second = leg(30.0, sign=-1, level_db=12.0)
+    (told,) = tell(PATH, [first, second])
+    assert (told.story, told.one.mover.crossed_s) == (Story.PASSAGE, 20.0)
+
+
+def test_who_vanishes_is_not_continued_by_the_next_who_passes() -> None:
+    found = tell(PATH, [leg(20.0, sign=-1, far_m=6.0, lost_far=-80.0), leg(30.0, sign=-1)])
+    assert stories(found) == [Story.PASSAGE] * 2
+
+
+def test_who_sways_slowly_either_way_fidgets_and_who_walks_slowly_passes() -> None:
+    slow = leg(20.0, speed_mps=0.4)
+    assert stories(tell(PATH, [replace(slow, rival_score=0.8 * slow.fit.score)])) == [Story.FIDGET]
+    assert stories(tell(PATH, [replace(slow, rival_score=0.5 * slow.fit.score)])) == [Story.PASSAGE]
 
 
 def test_who_follows_at_two_seconds_is_another() -> None:
