@@ -9,6 +9,7 @@ each step. Both are Markov, so the posterior needs a banded solver only (Rue and
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -154,7 +155,7 @@ class Smoother:
     def se_of(self, share: FloatArray, information: FloatArray) -> float:
         """Standard error of a weighted mean over all times."""
         pair = self._solve(information, share)
-        return float(np.sqrt(max(share @ (pair[0::2] + pair[1::2]), 0.0)))
+        return math.sqrt(max(float(share @ (pair[0::2] + pair[1::2])), 0.0))
 
     def _solve(self, information: FloatArray, right: FloatArray) -> FloatArray:
         banded = self._banded.copy()
