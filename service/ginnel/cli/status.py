@@ -54,6 +54,8 @@ def _lines(found: Status, zone: tzinfo) -> Iterator[str]:
         yield "nobody listens: no sensor has been heard of lately; `ginnel listen` listens"
     for sensor in found.sensors:
         yield _sensor_line(sensor, found.at_us, zone)
+        if not sensor.is_listened_to:
+            yield "    Start `ginnel listen`, or see why it does not listen (journalctl -u ginnel-listen)."
     for one in found.conditions:
         yield f"{one.severity.value}: {one.sentence} (since {_time(one.raised_us, zone)})"
         yield f"    {one.advice}"

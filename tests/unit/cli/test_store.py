@@ -165,10 +165,11 @@ def test_prune_and_vacuum_give_room_back(home: Path) -> None:
 def test_status_of_a_store_into_which_nobody_listens(home: Path) -> None:
     done = ginnel("status")
     assert done.exit_code == 2
-    first, line = done.stdout.splitlines()
+    first, line, advice = done.stdout.splitlines()
     assert first == "failure"
     assert line.startswith("lane: is not listened to, last heard ")
     assert line.endswith("coverage of the last hour 0.0 %, last passage 2026-03-02 10:03:20 UTC")
+    assert advice.startswith("    Start `ginnel listen`")
 
 
 def now_us() -> int:
@@ -228,10 +229,24 @@ def test_status_asks_for_every_sensor_of_the_settings(home: Path) -> None:
     listen_half_an_hour()
     with (home / "ginnel.toml").open("a") as file:
         file.write('[[sensor]]\nname = "gate"\n')
-    assert ginnel("status").exit_code == 2
+    done = ginnel("status")
+    assert done.exit_code == 2
+    assert "gate: is not listened to, never heard" in done.stdout
     with open_store("sqlite:///ginnel.db") as store:
         put_sensor(store, Sensor(name="gate"))
     assert "gate: is not listened to, never heard" in ginnel("status").stdout
+
+
+def test_status_tells_when_a_sensor_was_heard_though_nobody_has_set_the_clock(home: Path) -> None:
+    end_us = now_us()
+    span = Span(started_us=end_us - HOUR_US // 2, ended_us=end_us, sample_rate_hz=8000.0, clock_trusted=False)
+    with open_store("sqlite:///ginnel.db") as store:
+        record_span(store, Sensor(name="gate"), span, [], "1")
+    with (home / "ginnel.toml").open("a") as file:
+        file.write('[[sensor]]\nname = "gate"\n')
+    (line,) = [line for line in ginnel("status").stdout.splitlines() if line.startswith("gate")]
+    assert "never heard" not in line
+    assert " s ago, coverage of the last hour 50.0 %" in line
 
 
 def test_status_without_a_store_is_a_failure(home: Path) -> None:
