@@ -115,18 +115,23 @@ def joined(fine: Flow, edges_us: IntArray) -> Flow:
     )
 
 
-def total(one: Flow) -> Total:
-    """Add up the intervals of a flow."""
+def total(one: Flow, now_us: int | None = None) -> Total:
+    """Add up the intervals of a flow; coverage is of the time until now, since what is to come is no gap."""
     known = bool(one.is_known.any())
     both = int(one.both.sum())
     low, high = poisson_limits(np.array([both]))
+    start_us, end_us = int(one.edges_us[0]), int(one.edges_us[-1])
+    listened_us = int(one.listened_us.sum())
+    if now_us is not None:
+        # what was listened to is past, whatever the clock says now
+        end_us = min(end_us, max(now_us, start_us + listened_us))
     return Total(
         counts={way: int(count.sum()) if known else None for way, count in one.counts.items()},
         both=both if known else None,
         low=float(low[0]) if known else None,
         high=float(high[0]) if known else None,
-        listened_s=int(one.listened_us.sum()) / US_PER_S,
-        coverage=float(one.listened_us.sum() / (one.edges_us[-1] - one.edges_us[0])),
+        listened_s=listened_us / US_PER_S,
+        coverage=listened_us / max(end_us - start_us, 1),
     )
 
 

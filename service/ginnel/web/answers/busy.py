@@ -79,7 +79,7 @@ def look(store: Store, view: View, now_us: int) -> Busy:
         view=view,
         every=every,
         intervals=_intervals(joined(hours, edges_us), usual_of(store, sensor, edges_us, every, view.zone)),
-        total=total_of(own),
+        total=total_of(own, now_us),
         gaps=about.unheard(store, sensor, view.start_us, min(view.end_us, max(now_us, view.start_us))),
         week=typical_week_of(own, view.zone) if view.n_days >= 7 else None,
     )

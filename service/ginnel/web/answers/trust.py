@@ -56,7 +56,7 @@ def look(store: Store, view: View, now_us: int) -> Trust:
         view=view,
         every=view.every,
         flow=found,
-        total=total_of(found),
+        total=total_of(found, now_us),
         gaps=tuple(sorted(longest, key=lambda gap: gap.started_us)),
         n_gaps=len(gaps),
         facts=facts,
