@@ -133,7 +133,7 @@ def open_log(where: str | Path) -> Log:
     ExportError
         pandas is not installed; the message says how to get it.
     """
-    optional("pandas", "notebook", "a data frame")
+    optional("pandas", "pandas", "a data frame")
     text = str(where)
     if "://" not in text and not Path(text).is_file():
         raise StoreError(f"there is no store at {text}: give its file or database URL")
@@ -142,7 +142,7 @@ def open_log(where: str | Path) -> Log:
 
 def frame(table: Table) -> pd.DataFrame:
     """Make a data frame of a table; it is all in memory, about 120 bytes a passage."""
-    pandas = optional("pandas", "notebook", "a data frame")
+    pandas = optional("pandas", "pandas", "a data frame")
     pieces = list(table.batches)
     series = {}
     for at, column in enumerate(table.columns):

@@ -62,7 +62,7 @@ def test_a_server_that_is_not_there_is_told_without_the_password(tmp_path: Path)
 
 def test_a_missing_driver_is_told(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setitem(sys.modules, "psycopg", None)
-    with pytest.raises(StoreError, match=r"pip install 'ginnel\[postgresql\]'"):
+    with pytest.raises(StoreError, match=r"pip install 'psycopg\[binary\]'"):
         open_store("postgresql://someone@/ginnel")
 
 

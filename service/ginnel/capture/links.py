@@ -131,7 +131,7 @@ class SerialLink:
         try:
             import serial
         except ModuleNotFoundError as exc:
-            raise CaptureError('kind = "serial" needs pyserial: pip install "ginnel[serial]"') from exc
+            raise CaptureError('kind = "serial" needs pyserial: pip install pyserial') from exc
         self._path, self._baud = path, baud
         self._errors: tuple[type[Exception], ...] = (serial.SerialException, OSError)
         self._port: Any = None

@@ -82,7 +82,7 @@ def _portaudio() -> Any:
     try:
         import sounddevice
     except ModuleNotFoundError as exc:
-        raise CaptureError('kind = "sound" needs sounddevice: pip install "ginnel[sound]"') from exc
+        raise CaptureError('kind = "sound" needs sounddevice: pip install sounddevice') from exc
     except OSError as exc:  # the library that it wraps
         raise CaptureError(
             'kind = "sound" needs PortAudio: on Debian or Ubuntu, sudo apt install libportaudio2'

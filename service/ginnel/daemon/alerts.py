@@ -18,7 +18,7 @@ def send_alerts(urls: Sequence[str], site_name: str, changes: Sequence[Condition
     try:
         from apprise import Apprise, NotifyType
     except ModuleNotFoundError:
-        log.error("[notify] needs the Apprise library: pip install 'ginnel[notify]'")
+        log.error("[notify] needs the Apprise library: pip install apprise")
         return False
     raised = [one for one in changes if one.cleared_us is None]
     kind = NotifyType.SUCCESS

@@ -8,8 +8,8 @@ from typing import Any
 from ginnel.errors import ExportError
 
 
-def optional(library: str, extra: str, purpose: str) -> Any:
-    """Import a library of an extra.
+def optional(library: str, package: str, purpose: str) -> Any:
+    """Import a library of an extra; ``package`` is what it is called on the index.
 
     Raises
     ------
@@ -19,4 +19,4 @@ def optional(library: str, extra: str, purpose: str) -> Any:
     try:
         return importlib.import_module(library)
     except ModuleNotFoundError as error:
-        raise ExportError(f"{purpose} needs {library}: pip install 'ginnel[{extra}]'") from error
+        raise ExportError(f"{purpose} needs {library}: pip install {package}") from error

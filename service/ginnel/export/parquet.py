@@ -40,7 +40,7 @@ def write_dataset(table: Table, folder: Path) -> int:
     know; both names come back as columns. Returns the number of rows.
     """
     pa, _ = _arrow()
-    dataset = optional("pyarrow.dataset", "parquet", "Parquet")
+    dataset = optional("pyarrow.dataset", "pyarrow", "Parquet")
     schema = _schema(pa, table).append(pa.field("month", pa.string()))
     written = 0
 
@@ -48,7 +48,7 @@ def write_dataset(table: Table, folder: Path) -> int:
         nonlocal written
         for group in _groups(pa, _schema(pa, table), table):
             local = group["crossed_at"].cast(pa.timestamp("us", tz=table.zone.key))
-            month = optional("pyarrow.compute", "parquet", "Parquet").strftime(local, format="%Y-%m")
+            month = optional("pyarrow.compute", "pyarrow", "Parquet").strftime(local, format="%Y-%m")
             written += group.num_rows
             yield from group.append_column("month", month).cast(schema).to_batches()
 
@@ -69,7 +69,7 @@ def write_dataset(table: Table, folder: Path) -> int:
 
 
 def _arrow() -> tuple[Any, Any]:
-    return optional("pyarrow", "parquet", "Parquet"), optional("pyarrow.parquet", "parquet", "Parquet")
+    return optional("pyarrow", "pyarrow", "Parquet"), optional("pyarrow.parquet", "pyarrow", "Parquet")
 
 
 def _schema(pa: Any, table: Table) -> Any:
@@ -117,7 +117,7 @@ def _array(pa: Any, type_: Any, column: Column, cells: Cells) -> Any:
         words = pa.array([word or None for word in cells.words], pa.string())
         return pa.DictionaryArray.from_arrays(pa.array(cells.codes), words).dictionary_decode()
     if isinstance(cells, Numbered):
-        compute = optional("pyarrow.compute", "parquet", "Parquet")
+        compute = optional("pyarrow.compute", "pyarrow", "Parquet")
         number = pa.array(cells.number).cast(pa.string())
         return compute.binary_join_element_wise(_array(pa, type_, column, cells.word), number, "-")
     if is_moments(cells):

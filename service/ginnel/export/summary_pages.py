@@ -43,7 +43,7 @@ def summary_html(pages: Sequence[Summary]) -> str:
 
 def summary_pdf(pages: Sequence[Summary]) -> bytes:
     """Lay pages out as a PDF of A4 pages."""
-    fpdf = optional("fpdf", "pdf", "a PDF")
+    fpdf = optional("fpdf", "fpdf2", "a PDF")
     pdf = fpdf.FPDF(format="A4")
     pdf.set_margin(14)
     pdf.set_auto_page_break(True, margin=12)

@@ -31,8 +31,8 @@ def write_workbook(tables: Sequence[Table], path: Path) -> int:
     ExportError
         A table has more rows than a sheet holds.
     """
-    library = optional("xlsxwriter", "excel", "an Excel workbook")
-    exceptions = optional("xlsxwriter.exceptions", "excel", "an Excel workbook")
+    library = optional("xlsxwriter", "xlsxwriter", "an Excel workbook")
+    exceptions = optional("xlsxwriter.exceptions", "xlsxwriter", "an Excel workbook")
     options = {
         "constant_memory": True,
         "strings_to_formulas": False,

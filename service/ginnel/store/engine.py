@@ -114,7 +114,7 @@ def make_engine(url: str, *, create: bool = False, read_only: bool = False) -> E
             return create_engine(parsed, pool_pre_ping=True, pool_size=5)
         except ModuleNotFoundError as error:
             raise StoreError(
-                f"{shown(parsed)} needs the PostgreSQL driver: pip install 'ginnel[postgresql]'"
+                f"{shown(parsed)} needs the PostgreSQL driver: pip install 'psycopg[binary]'"
             ) from error
     path = _checked_file(parsed, create=create)
     # The file is opened by name, not by URI: a name may hold any character.

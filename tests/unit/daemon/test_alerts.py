@@ -84,7 +84,7 @@ def test_without_the_library_it_is_told_how_to_get_it(
 ) -> None:
     monkeypatch.setitem(sys.modules, "apprise", None)
     assert not send_alerts(["json://x"], "x", [CLIPS])
-    assert "pip install 'ginnel[notify]'" in caplog.text
+    assert "pip install apprise" in caplog.text
 
 
 def test_a_message_says_what_to_do_only_where_something_is_wrong() -> None:
