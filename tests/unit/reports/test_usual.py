@@ -95,7 +95,7 @@ def test_what_is_still_to_come_is_no_gap_in_the_coverage(lane: Store) -> None:
     ten = to_us(MONDAY.replace(hour=10))
     assert total(today).coverage == pytest.approx(1 / 24)
     assert total(today, ten).coverage == pytest.approx(1 / 10), "one hour of ten"
-    assert total(today, ten + 7 * 24 * 3600 * US_PER_S).coverage == pytest.approx(1 / 24), "a day that is over"
+    assert total(today, ten + 7 * 24 * 3600 * US_PER_S).coverage == pytest.approx(1 / 24), "a day gone by"
     assert total(today, to_us(MONDAY) - 9 * 3600 * US_PER_S).coverage == 1.0, "never above all"
     assert total(flow(lane, "lane", day_edges(9)), ten).coverage == 0.0, "a day to come"
 
