@@ -20,6 +20,7 @@ COMMANDS = {
     "export": "Write passages, counts or speeds as files.",
     "init": "Write a commented ginnel.toml and an empty store.",
     "listen": "Listen live to all sensors, as a service.",
+    "plan": "Tell what a planned mounting will hear, before drilling.",
     "replay": "Find the passages in recorded captures and log them.",
     "serve": "Show the dashboard.",
     "simulate": "Make captures with known truth.",

@@ -13,7 +13,7 @@ import numpy as np
 
 from ginnel.doppler.frames import FramePlan
 from ginnel.doppler.kinematics import BODY_CENTRE_M, hz_per_mps, nearest_distance_m
-from ginnel.words import Aspect, Channels, FloatArray, Sensor
+from ginnel.words import Aspect, Channels, FloatArray, Mounting, Sensor
 
 #: Natural-log units of power in one decibel.
 NEPERS_PER_DB = np.log(10.0) / 10.0
@@ -142,13 +142,20 @@ class Site:
         return weights
 
     def _nominal_level(self, x_m: FloatArray) -> FloatArray:
-        mounting = self.sensor.mounting
-        width_deg = mounting.beam_width_deg or _USUAL_BEAM_DEG
-        drop_m = mounting.height_m - BODY_CENTRE_M
-        beam_deg = mounting.beam_angle_deg if mounting.aspect is Aspect.OBLIQUE else 0.0
-        azimuth_deg = np.degrees(np.arctan2(mounting.offset_m, x_m)) - beam_deg
-        elevation_deg = np.degrees(np.arctan2(drop_m, np.hypot(x_m, mounting.offset_m))) - mounting.tilt_deg
-        main_db = -3.0 * ((2 * azimuth_deg / width_deg[0]) ** 2 + (2 * elevation_deg / width_deg[1]) ** 2)
-        lobe_db = np.where(x_m > 0, _SIDE_LOBE_DB, _BACK_LOBE_DB)
-        one_way_db = 10 * np.log10(10 ** (main_db / 10) + 10 ** (lobe_db / 10))
-        return np.asarray(2 * one_way_db * NEPERS_PER_DB - 4 * np.log(np.hypot(x_m, self.offset_m)))
+        both_ways_db = 2 * beam_db(self.sensor.mounting, x_m)
+        return np.asarray(both_ways_db * NEPERS_PER_DB - 4 * np.log(np.hypot(x_m, self.offset_m)))
+
+
+def beam_db(mounting: Mounting, x_m: FloatArray) -> FloatArray:
+    """Gain towards a mover's centre line at places along the path, one way, dB against the beam's axis.
+
+    A Gaussian main lobe with the mounting's half-power widths, on side and back lobes.
+    """
+    width_deg = mounting.beam_width_deg or _USUAL_BEAM_DEG
+    drop_m = mounting.height_m - BODY_CENTRE_M
+    beam_deg = mounting.beam_angle_deg if mounting.aspect is Aspect.OBLIQUE else 0.0
+    azimuth_deg = np.degrees(np.arctan2(mounting.offset_m, x_m)) - beam_deg
+    elevation_deg = np.degrees(np.arctan2(drop_m, np.hypot(x_m, mounting.offset_m))) - mounting.tilt_deg
+    main_db = -3.0 * ((2 * azimuth_deg / width_deg[0]) ** 2 + (2 * elevation_deg / width_deg[1]) ** 2)
+    lobe_db = np.where(x_m > 0, _SIDE_LOBE_DB, _BACK_LOBE_DB)
+    return np.asarray(10 * np.log10(10 ** (main_db / 10) + 10 ** (lobe_db / 10)))
