@@ -8,8 +8,11 @@ from zoneinfo import ZoneInfo
 import pytest
 from babel import Locale
 
+from ginnel.reports import Every
 from ginnel.times import to_us
-from ginnel.web.wording import PER_MPS, Wording
+from ginnel.web.view import Show, View
+from ginnel.web.wording import PER_MPS, Wording, interval_name
+from ginnel.words import Sensor
 
 THIN = "\N{NARROW NO-BREAK SPACE}"
 
@@ -53,6 +56,22 @@ def test_times_are_the_sites() -> None:
     assert wording("en_US").clock(summer).replace(THIN, " ") == "1:00 PM"
     assert wording().moment(summer) == "Wednesday 1 July, 13:00"
     assert wording().iso(summer) == "2026-07-01T13:00:05+01:00"
+
+
+def test_an_interval_is_named_as_a_person_would() -> None:
+    zone = ZoneInfo("Europe/Dublin")
+    years = View(
+        sensor=Sensor(name="lane"),
+        zone=zone,
+        show=Show.RANGE,
+        first=date(2023, 1, 1),
+        last=date(2026, 7, 31),
+    )
+    july = to_us(datetime(2026, 7, 1, tzinfo=zone))
+    assert interval_name(years, Every.MONTH, july, wording()) == "July 2026"
+    assert interval_name(years, Every.MONTH, july, wording("de")) == "Juli 2026"
+    assert interval_name(years, Every.WEEK, july, wording()) == "week from 1 July 2026"
+    assert interval_name(years, Every.HOUR, july, wording()) == "Wednesday 1 July, 00:00"
 
 
 def test_days_are_told_once() -> None:

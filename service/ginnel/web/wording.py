@@ -92,6 +92,10 @@ class Wording:
         """Write the day of a moment."""
         return self.day(self._local(moment_us).date(), weekday=weekday, year=year)
 
+    def month_of(self, moment_us: int) -> str:
+        """Write the month of a moment: March 2026."""
+        return self._skeleton("yMMMM", self._local(moment_us).date())
+
     def moment(self, moment_us: int) -> str:
         """Write day and time of a moment."""
         return f"{self.day_of(moment_us)}, {self.clock(moment_us)}"
@@ -164,5 +168,7 @@ def interval_name(view: View, every: Every, start_us: int, wording: Wording) -> 
     """Name an interval of a view by its start."""
     if every is Every.HOUR:
         return wording.clock(start_us) if view.n_days == 1 else wording.moment(start_us)
+    if every is Every.MONTH:
+        return wording.month_of(start_us)
     day = wording.day_of(start_us, weekday=every is Every.DAY, year=view.n_days > 366)
     return f"week from {day}" if every is Every.WEEK else day
