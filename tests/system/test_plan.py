@@ -58,6 +58,7 @@ def test_a_picture_comes_with_it(ginnel: Ginnel, tmp_path: Path) -> None:
         (("--plot", "nowhere/plan.png"), 1, "nowhere/plan.png: cannot be written"),
         (("--sensor", "gate"), 1, "no sensor is called gate"),
         (("--rate", "100"), 2, "must be from 500 Hz"),
+        (("--highpass-hz", "50", "--lowpass-hz", "50"), 2, "must be above the lower corner, 50"),
         (("--height-m", "-1"), 2, "--height-m"),
         (("--config", "none.toml"), 1, "none.toml: is not there"),
     ],

@@ -23,6 +23,7 @@ _HANN_BINS = 1.5
 _CLEAR_BINS = 2
 #: A mover is heard where this share of frames shows it.
 _DETECTION_RATE = 0.9
+_LEAST_FRAMES = 4  # without overlap, in which a mover must be heard; common practice, no source
 _STEP_M = 0.02
 
 
@@ -48,7 +49,7 @@ class Lane:
     behind_m: tuple[float, float] | None
     dwell_s: float
     cycles: float  # of the Doppler tone in the time heard
-    mean_bias_ratio: float  # of radial speed against speed, over the stretch ahead; 0 is none
+    mean_bias_ratio: float | None  # of radial speed against speed, over the stretch ahead; 0 is unbiased
     peak_dbm: float
     is_countable: bool  # heard for long enough, and near enough to the sensor to show the crossing
 
@@ -214,7 +215,7 @@ def _lane(
     ahead, behind = x_m[heard & (x_m > 0)], -x_m[heard & (x_m < 0)]
     dwell_s = float(np.count_nonzero(heard)) * _STEP_M / target.speed_mps
     bend_m = max(body.bend_ratio * nearest_m, _STEP_M) + body.length_m / 2
-    enough = dwell_s >= 4 / (frames.frame_rate_hz / 2)  # four whole frames; common practice, no source
+    enough = dwell_s * frames.bin_hz >= _LEAST_FRAMES
     return Lane(
         target=target,
         y_m=y_m,
@@ -224,7 +225,7 @@ def _lane(
         dwell_s=dwell_s,
         # every half wavelength of distance is a cycle
         cycles=float(np.sum(ratio[heard]) * _STEP_M / (wavelength_m(sensor.carrier_hz) / 2)),
-        mean_bias_ratio=float(np.mean(ratio[heard & (x_m > 0)]) - 1) if len(ahead) else np.nan,
+        mean_bias_ratio=float(np.mean(ratio[heard & (x_m > 0)]) - 1) if len(ahead) else None,
         peak_dbm=float(level_dbm.max()),
         is_countable=bool(enough and len(ahead) and ahead.min() <= bend_m),
     )

@@ -16,9 +16,8 @@ from ginnel.words import Channels
 
 #: Room above the fastest speed for the low-pass of the converter; common practice, no source.
 _RATE_MARGIN = 2.5
-_UNEVEN_DB = 15.0  # tuned by eye: the chain takes what is a stronger mover's leftovers for it
 _LOOKED_AT_M = np.arange(0.5, 25.0, 0.5)
-_WIDE_ENDS = ("near edge", "middle", "far edge")
+_PLACES = ("near edge", "middle", "far edge")
 
 
 def advice(plan: Plan, lines: tuple[Line, ...], ranked: tuple[Choice, ...]) -> tuple[str, ...]:
@@ -37,7 +36,7 @@ def advice(plan: Plan, lines: tuple[Line, ...], ranked: tuple[Choice, ...]) -> t
 def _verdict(plan: Plan) -> str:
     lanes = plan.lanes_of(plan.expected)
     who = plan.expected.name
-    deaf = [name for name, lane in zip(_WIDE_ENDS, lanes, strict=True) if not lane.is_countable]
+    deaf = [name for name, lane in zip(_PLACES, lanes, strict=True) if not lane.is_countable]
     if not deaf:
         return f"A {who} can be counted over the whole width of the path."
     if len(deaf) == len(lanes):
@@ -113,13 +112,13 @@ def _on_the_mounting(ranked: tuple[Choice, ...]) -> Iterator[str]:
     if not best.is_countable:
         yield "No mounting tried counts over the whole width: a narrower path, or two sensors, would."
     elif best is not planned and not planned.is_countable:
-        yield f"Better: {best.name}. It counts over the whole width."
+        yield f"Better, if it can be had: {best.name}. It counts over the whole width."
     elif best is not planned and best.farthest_m < planned.farthest_m - 0.2:
         yield (
-            f"Better: {best.name}. It passes within {best.farthest_m:.1f} m of everybody instead of "
+            f"Better, if it can be had: {best.name}. It passes within {best.farthest_m:.1f} m of everybody instead of "
             f"{planned.farthest_m:.1f} m, so followers are told apart closer to each other."
         )
-    if planned.unevenness_db > _UNEVEN_DB:
+    if not planned.is_even:
         yield (
             f"A mover on one side of the path is {planned.unevenness_db:.0f} dB louder than on the other "
             "and will hide it when both pass at once: more height or distance evens that out."

@@ -8,6 +8,9 @@ from ginnel.doppler.kinematics import BODY_CENTRE_M
 from ginnel.survey.plan import Lane, Plan, make_plan
 from ginnel.words import Aspect, Mounting
 
+#: Beyond this a mover on the loud side hides one on the other: the chain takes 2 % of a frame's strongest
+#: cell (`passages.cluster`) as that mover's own limbs.
+UNEVEN_DB = 17.0
 _BESIDE_M = 0.5  # from the edge of the path
 _ANGLES_DEG = (15.0, 30.0, 45.0)
 _OVER_ROAD_M = 5.5  # lowest thing over a road; common practice, no source
@@ -38,20 +41,31 @@ class Choice:
         return max(peaks) - min(peaks)
 
     @property
-    def bias_ratio(self) -> float:
-        """Mean cosine bias of the radial speed along the middle."""
+    def is_even(self) -> bool:
+        """Whether the two sides of the path are heard alike enough not to hide each other."""
+        return self.unevenness_db <= UNEVEN_DB
+
+    @property
+    def bias_ratio(self) -> float | None:
+        """Mean cosine bias of the radial speed along the middle; None where nothing is heard."""
         return self.lanes[1].mean_bias_ratio
 
 
 def choices(plan: Plan) -> tuple[Choice, ...]:
     """Return the planned mounting and its rivals, best first.
 
-    Those that count at both edges come first; among them the one whose crossings are spread least along
-    the path, since followers nearer than that run together, and then the one with the least cosine bias.
-    A rule of thumb; common practice, no source.
+    Those that count over the whole width come first, before them those that hear both sides alike; among
+    equals the one whose crossings are spread least along the path, since followers nearer than that run
+    together, then the one with the least cosine bias. A rule of thumb; common practice, no source.
     """
     found = [_choice(plan, name, mounting) for name, mounting in _candidates(plan).items()]
-    return tuple(sorted(found, key=lambda c: (not c.is_countable, round(c.farthest_m, 1), -c.bias_ratio)))
+    return tuple(sorted(found, key=_rank))
+
+
+def _rank(choice: Choice) -> tuple[bool, bool, float, float]:
+    """Place among rivals, the smallest first."""
+    bias_ratio = -1.0 if choice.bias_ratio is None else choice.bias_ratio
+    return not choice.is_countable, not choice.is_even, round(choice.farthest_m, 1), -bias_ratio
 
 
 def _candidates(plan: Plan) -> dict[str, Mounting]:

@@ -11,8 +11,8 @@ from ginnel.doppler.kinematics import cosine, nearest_distance_m
 from ginnel.errors import ExportError
 from ginnel.passages.site import VEHICLE, WALKER
 from ginnel.survey.plan import Plan, on_line
-from ginnel.survey.plan_radar import CAR
-from ginnel.survey.plan_speeds import mains_lines
+from ginnel.survey.plan_radar import CAR, PERSON
+from ginnel.survey.plan_speeds import mains_lines, usual_speeds_mps
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -73,13 +73,16 @@ def _draw_level(axes: Axes, plan: Plan) -> None:
     """Levels ahead of the sensor over the noise of one bin."""
     x_m = np.geomspace(0.3, VEHICLE.reach_m, 400)
     along = plan.along(x_m)
-    axes.semilogx(x_m, along.person_dbm, color=_DARK, label="person, 1 m²")
-    axes.semilogx(x_m, along.car_dbm, "--", color=_WARM, label="car, 30 m²")
+    axes.semilogx(x_m, along.person_dbm, color=_DARK, label=f"person, {PERSON.usual_m2:g} m²")
+    axes.semilogx(x_m, along.car_dbm, "--", color=_WARM, label=f"car, {CAR.usual_m2:g} m²")
     axes.axhline(plan.noise_dbm + plan.needed_snr_db, color=_PALE, label="least that is heard")
     axes.axhline(plan.noise_dbm, color=_PALE, linestyle=":", label="receiver's noise in one bin")
-    axes.set(xlabel="ahead of the sensor, m", ylabel="echo, dBm")
+    ahead_m = plan.lanes_of(plan.expected)[1].ahead_m
+    if ahead_m is not None:
+        axes.axvspan(*ahead_m, color=_DARK, alpha=0.08, label=f"a {plan.expected.name} is followed")
+    axes.set(xlabel="ahead of the sensor, m", ylabel="echo, dBm", xlim=(x_m[0], x_m[-1]))
     axes.grid(visible=True, alpha=0.3)
-    axes.legend(loc="upper right", fontsize="small")
+    axes.legend(loc="lower left", fontsize="small")
 
 
 def _draw_lines(axes: Axes, plan: Plan) -> None:
@@ -89,10 +92,10 @@ def _draw_lines(axes: Axes, plan: Plan) -> None:
         colour = _WARM if line.is_expected else _PALE
         axes.axvline(line.speed_mps, color=colour, linestyle=":" if line.made_by == "hum" else "-")
         axes.text(line.speed_mps, 0.97, f" {line.shift_hz:g} Hz", rotation=90, va="top", fontsize="x-small")
-    axes.axvline(plan.expected.speed_mps, color=_DARK, linewidth=6, alpha=0.3)
+    axes.axvspan(*usual_speeds_mps(plan.expected), color=_DARK, alpha=0.2)
     axes.set(
-        xlabel=f"radial speed, m/s; wide: a {plan.expected.name}'s usual speed; full: lamps, dotted: hum",
-        xlim=(0, max(plan.expected.speed_mps * 1.2, lines[-1].speed_mps * 1.05)),
+        xlabel=f"radial speed, m/s; shaded: usual for a {plan.expected.name}; full: lamps, dotted: hum",
+        xlim=(0, max(plan.expected.speed_mps * 1.5, lines[-1].speed_mps * 1.05)),
         ylim=(0, 1),
         yticks=[],
     )

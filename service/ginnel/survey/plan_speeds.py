@@ -12,6 +12,7 @@ _N_LAMP_LINES = 6
 #: Spread of free walking speeds, m/s: Weidmann, ETH IVT 90 (1993); of cars on one road, a sixth: common
 #: practice, no source.
 _WALKING_SD_MPS, _DRIVING_SD_RATIO = 0.26, 1 / 6
+_NORMAL_95 = 1.6449  # 95th percentile of the normal curve
 _ANGLES_OFF_DEG = (1.0, 2.0, 5.0)
 _OFFSET_OFF_RATIO = 0.1
 
@@ -35,12 +36,23 @@ class SpeedError:
     ratio: float
 
 
+def _spread_mps(target: Target) -> float:
+    return _DRIVING_SD_RATIO * target.speed_mps if target is CAR else _WALKING_SD_MPS
+
+
+def usual_speeds_mps(target: Target) -> tuple[float, float]:
+    """Give the middle nine tenths of speeds, as of a normal spread: walkers 0.912 to 1.768 m/s."""
+    reach_mps = _NORMAL_95 * _spread_mps(target)
+    return target.speed_mps - reach_mps, target.speed_mps + reach_mps
+
+
 def mains_lines(carrier_hz: float, mains_hz: float, target: Target, bin_hz: float) -> tuple[Line, ...]:
     """Hum, and the first lines of lamps, which flicker at twice the mains frequency.
 
     100 Hz looks like 1.4242 m/s at 10.525 GHz.
     """
-    sd_mps = _DRIVING_SD_RATIO * target.speed_mps if target is CAR else _WALKING_SD_MPS
+    sd_mps = _spread_mps(target)
+    low_mps, high_mps = usual_speeds_mps(target)
     half_bin_mps = bin_hz / 2 / hz_per_mps(carrier_hz)
 
     def below(speed_mps: float) -> float:
@@ -54,7 +66,7 @@ def mains_lines(carrier_hz: float, mains_hz: float, target: Target, bin_hz: floa
                 shift_hz=multiple * mains_hz,
                 speed_mps=speed_mps,
                 made_by="hum" if multiple == 1 else "lamps",
-                is_expected=0.05 <= below(speed_mps) <= 0.95,
+                is_expected=low_mps <= speed_mps <= high_mps,
                 hidden_share=below(speed_mps + half_bin_mps) - below(speed_mps - half_bin_mps),
             )
         )

@@ -135,7 +135,21 @@ def test_from_the_side_of_a_wide_path_a_place_over_it_is_better() -> None:
     assert best.name.startswith("over the middle")
     # by hand: 1.5 m to the side, 1.4 m below
     assert best.farthest_m == pytest.approx(2.052, abs=1e-3)
-    assert f"Better: {best.name}" in sentences(plan)
+    assert f"Better, if it can be had: {best.name}" in sentences(plan)
+
+
+def test_a_mounting_whose_near_side_hides_the_far_one_comes_after_those_that_hear_both_alike() -> None:
+    narrow = replace(ROAD.mounting, beam_width_deg=(30.0, 30.0))
+    plan = make_plan(replace(ROAD, mounting=narrow), RadarModule(), path_width_m=6.0)
+    ranked = [choice for choice in choices(plan) if choice.is_countable]
+    beside = next(choice for choice in ranked if choice.name == "beside the path, along it")
+    assert beside.unevenness_db > 17.0
+    assert [choice.is_even for choice in ranked] == sorted((c.is_even for c in ranked), reverse=True)
+    assert ranked[-1] is beside
+    assert "hide it when both pass at once" not in sentences(plan)
+    along = replace(beside.mounting, beam_width_deg=(30.0, 30.0))
+    uneven = make_plan(replace(ROAD, mounting=along), RadarModule(), path_width_m=6.0)
+    assert "hide it when both pass at once" in sentences(uneven)
 
 
 def test_sizes_that_are_none_are_refused() -> None:

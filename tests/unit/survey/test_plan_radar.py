@@ -12,6 +12,7 @@ from ginnel.survey.plan_radar import (
     CAR,
     PERSON,
     RadarModule,
+    field_v_m,
     most_gain_dbi,
     needed_snr_db,
     noise_dbm,
@@ -104,6 +105,12 @@ def test_power_density_falls_with_the_square(distance_m: float, w_m2: float) -> 
     assert MODULE.eirp_dbm == pytest.approx(21.010, abs=0.001)
     found = power_density_w_m2(MODULE, np.array([distance_m]))[0]
     assert found == pytest.approx(w_m2, rel=2e-3)
+
+
+def test_the_field_at_3_m() -> None:
+    # sqrt(30 x 0.12619 W) / 3 m by hand; and 47 CFR 15.245's 2500 mV/m is an EIRP of 1.875 W, 32.730 dBm
+    assert field_v_m(MODULE, 3.0) == pytest.approx(0.6486, abs=1e-4)
+    assert field_v_m(RadarModule(power_mw=1875.0, gain_dbi=0.0), 3.0) == pytest.approx(2.5, abs=1e-6)
 
 
 def test_the_public_reference_level_is_icnirps() -> None:

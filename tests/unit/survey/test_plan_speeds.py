@@ -11,6 +11,7 @@ from ginnel.survey.plan_speeds import (
     distance_error_ratio,
     mains_lines,
     speed_errors,
+    usual_speeds_mps,
 )
 
 
@@ -38,6 +39,11 @@ def test_lamps_lie_among_walkers_at_10_ghz_but_not_among_cars() -> None:
     assert not any(line.is_expected for line in mains_lines(10.525e9, 50, CAR, 30.0))
     # Weidmann's walkers, N(1.34, 0.26): 90 % lie in 0.9123 to 1.7677 m/s, so 120 Hz is inside, 60 is not
     assert [line.shift_hz for line in mains_lines(10.525e9, 60, PERSON, 10.0) if line.is_expected] == [120]
+
+
+def test_usual_speeds_are_those_between_the_5th_and_the_95th_percentile() -> None:
+    # Weidmann's N(1.34, 0.26), percentiles by formula
+    assert usual_speeds_mps(PERSON) == pytest.approx((0.9123, 1.7677), abs=1e-4)
 
 
 def test_the_hidden_share_is_that_of_a_bell_curve() -> None:
