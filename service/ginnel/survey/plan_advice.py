@@ -115,8 +115,8 @@ def _on_the_mounting(ranked: tuple[Choice, ...]) -> Iterator[str]:
         yield f"Better, if it can be had: {best.name}. It counts over the whole width."
     elif best is not planned and best.farthest_m < planned.farthest_m - 0.2:
         yield (
-            f"Better, if it can be had: {best.name}. It passes within {best.farthest_m:.1f} m of everybody instead of "
-            f"{planned.farthest_m:.1f} m, so followers are told apart closer to each other."
+            f"Better, if it can be had: {best.name}. It passes within {best.farthest_m:.1f} m of everybody "
+            f"instead of {planned.farthest_m:.1f} m, so followers are told apart closer to each other."
         )
     if not planned.is_even:
         yield (
