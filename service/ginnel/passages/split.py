@@ -50,8 +50,8 @@ class Tale:
 
 def split(cluster: Cluster, one: Explained) -> list[Explained]:
     """The two movers that a fitted one really is, or itself."""
-    if one.fit.score < _LEAST_SCORE:
-        return [one]
+    if not cluster.site.body.may_turn or one.fit.score < _LEAST_SCORE:
+        return [one]  # vehicles keep their distance, and their frames are many
     single, pair = tales_of(cluster, one)
     first, second = pair.movers
     apart_db = abs(float(first.level.mean() - second.level.mean())) / NEPERS_PER_DB
