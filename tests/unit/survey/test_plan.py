@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from dataclasses import replace
 from pathlib import Path
 from xml.etree import ElementTree
@@ -51,6 +52,32 @@ def test_cycles_are_half_wavelengths_of_distance_covered() -> None:
     assert lane.dwell_s == pytest.approx(
         sum(b - a for a, b in (lane.ahead_m, lane.behind_m)) / 1.34, rel=2e-3
     )
+
+
+def test_the_beam_is_taken_twice() -> None:
+    # at half the horizontal width: half the power in the main lobe, and 13 dB below the axis beside it,
+    # so 10^-0.3 + 10^-1.3 = 0.55131 one way, -5.17 dB there and back
+    offset_m = 5 * np.tan(np.radians(40))
+    mounting = Mounting(height_m=1.0, offset_m=float(offset_m), beam_width_deg=(80.0, 40.0))
+    along = make_plan(replace(CORRIDOR, mounting=mounting), RadarModule()).along(np.array([5.0]))
+    assert along.beam_db[0] == pytest.approx(-5.172, abs=0.002)
+
+
+def test_noise_and_lowest_speed_come_from_a_bin() -> None:
+    plan = make_plan(CORRIDOR, RadarModule())
+    # k T0 B F with F = 20 dB is -143.975 dBm in 10 Hz, and a Hann bin is one and a half wide (Harris 1978)
+    assert plan.noise_dbm == pytest.approx(-143.975 + 10 * np.log10(0.15 * plan.bin_hz), abs=0.001)
+    assert plan.lowest.speed_mps == pytest.approx(2 * plan.bin_hz / 70.21524, rel=1e-5)  # half a Hann lobe
+
+
+def test_a_plan_counts_on_the_weakest_of_its_movers() -> None:
+    sensor = replace(ROAD, mounting=Mounting(height_m=1.0))
+    plan = make_plan(sensor, RadarModule(power_mw=1e-3))
+    far_m = plan.lanes_of(CAR)[1].ahead_m
+    assert far_m is not None
+    # there a usual car, 30 m2, has 4.77 dB more than the least of one of 10 m2
+    snr_db = plan.along(np.array([far_m[1]])).car_snr_db[0]
+    assert snr_db - plan.needed_snr_db == pytest.approx(4.771, abs=0.01)
 
 
 def test_speeds_end_at_the_amplifier_the_sample_rate_and_the_settings() -> None:
@@ -155,6 +182,14 @@ def test_a_mounting_whose_near_side_hides_the_far_one_comes_after_those_that_hea
 def test_sizes_that_are_none_are_refused() -> None:
     with pytest.raises(ValueError, match="must be positive"):
         make_plan(CORRIDOR, RadarModule(), path_width_m=0)
+
+
+def test_a_picture_without_its_library_says_what_to_install(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setitem(sys.modules, "matplotlib.figure", None)
+    with pytest.raises(ExportError, match=r"pip install 'ginnel\[plot\]'"):
+        draw_plan(make_plan(CORRIDOR, RadarModule()), tmp_path / "plan.svg")
 
 
 def test_the_picture_names_its_curves(tmp_path: Path) -> None:
