@@ -110,7 +110,7 @@ def _on_the_mounting(ranked: tuple[Choice, ...]) -> Iterator[str]:
     best = ranked[0]
     planned = next(choice for choice in ranked if choice.name == "as planned")
     if not best.is_countable:
-        yield "No mounting tried counts over the whole width: a narrower path, or two sensors, would."
+        yield "No mounting tried counts over the whole width with this module: mend what is said above first."
     elif best is not planned and not planned.is_countable:
         yield f"Better, if it can be had: {best.name}. It counts over the whole width."
     elif best is not planned and best.farthest_m < planned.farthest_m - 0.2:
