@@ -14,7 +14,7 @@ from ginnel.passages.explain import explain
 from ginnel.passages.measure import measure
 from ginnel.passages.pace import pace_of
 from ginnel.passages.site import Site
-from ginnel.passages.stops import LONGEST_STOP_S, Held, joined, leg_of, stopped_leg
+from ginnel.passages.stops import LONGEST_STOP_S, Held, joined, leg_of, may_have_stopped, stopped_leg
 from ginnel.passages.stories import Told, tell
 from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor, Story
 
@@ -47,6 +47,7 @@ class Chain:
         self._n_samples = 0
         self._crossed_us: deque[int] = deque(maxlen=64)
         self._given: deque[tuple[float, int]] = deque(maxlen=16)
+        self._recent: deque[Held] = deque(maxlen=16)
         self._held: list[Held] = []
 
     @property
@@ -69,41 +70,46 @@ class Chain:
         """End the span."""
         passages = self._passages(self._front.finish())
         for stretch in self._activity.finish():
-            self._read(stretch)
+            passages += self._read(stretch)
         return passages + self._released(math.inf)
 
     def _passages(self, batches: list[SpectrumBatch]) -> list[Passage]:
         passages: list[Passage] = []
         for batch in batches:
             for stretch in self._activity.push(batch):
-                self._read(stretch)
+                passages += self._read(stretch)
             passages += self._released(self._activity.settled_frame_idx)
         return passages
 
-    def _read(self, stretch: Stretch) -> None:
-        """Find the passages of a stretch, and hold each while it may yet turn out to be a stop."""
+    def _read(self, stretch: Stretch) -> list[Passage]:
         cluster = Cluster(
             self._site, stretch.first_frame_idx, stretch.power, stretch.background, self._front.watched
         )
+        passages: list[Passage] = []
         for told in tell(self._site, explain(cluster)):
             crossed_frame = told.one.mover.crossed_s * self._site.frame_rate_hz
-            if not self._belongs(stretch, told, crossed_frame):
-                continue
-            self._given.append((crossed_frame, told.one.mover.sign))
-            passage = self._passage(stretch, cluster, told, crossed_frame)
-            self._hold(Held(passage, leg_of(stretch.first_frame_idx, told.one)))
+            if self._belongs(stretch, told, crossed_frame):
+                self._given.append((crossed_frame, told.one.mover.sign))
+                passage = self._passage(stretch, cluster, told, crossed_frame)
+                passages += self._sorted_out(Held(passage, leg_of(stretch.first_frame_idx, told.one)))
+        return passages
 
-    def _hold(self, new: Held) -> None:
-        """Hold a passage; the rest of one who stopped becomes one with what came before."""
-        before = stopped_leg(self._site, [held.leg for held in self._held], new.leg)
-        if before is None or {new.passage.story, self._held[before].passage.story} != {Story.PASSAGE}:
+    def _sorted_out(self, new: Held) -> list[Passage]:
+        """Give a passage out, unless it is the rest of one who stopped, or may be the first part of one."""
+        before = stopped_leg(self._site, [recent.leg for recent in self._recent], new.leg)
+        recent = None if before is None else self._recent[before]
+        self._recent.append(new)
+        if recent is not None and {new.passage.story, recent.passage.story} == {Story.PASSAGE}:
+            self._held = [joined(recent, new) if held is recent else held for held in self._held]
+            return []
+        if new.passage.story is Story.PASSAGE and may_have_stopped(self._site, new.leg):
             self._held.append(new)
-        else:
-            self._held[before] = joined(self._held[before], new)
+            return []
+        return [new.passage]
 
     def _released(self, settled_frame_idx: float) -> list[Passage]:
-        """Passages whose continuation would have been read by now."""
-        stop = LONGEST_STOP_S * self._site.frame_rate_hz if self._site.body.may_turn else 0.0
+        """Give out held passages whose continuation would have been read by now."""
+        stop = LONGEST_STOP_S * self._site.frame_rate_hz
         out = [held for held in self._held if held.leg.last_frame + stop < settled_frame_idx]
         self._held = [held for held in self._held if held.leg.last_frame + stop >= settled_frame_idx]
         return [held.passage for held in out]

@@ -88,6 +88,11 @@ def _continues(site: Site, earlier: Leg, later: Leg) -> bool:
     )
 
 
+def may_have_stopped(site: Site, leg: Leg) -> bool:
+    """Whether who approached may have braked in full view instead of passing: the crossing is yet to come."""
+    return site.body.may_turn and leg.sign > 0 and leg.near_excess_db > STAYS_DB
+
+
 def near_excess_db(one: Explained) -> float:
     """How much higher the level beside the sensor is than further out, against the mounting's curve.
 

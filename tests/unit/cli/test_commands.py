@@ -148,7 +148,7 @@ def test_a_port_in_use_is_one_clear_line() -> None:
         port = taken.getsockname()[1]
         done = ginnel("serve", "--port", str(port))
     assert done.exit_code == 1
-    assert done.stderr == f"ginnel: port {port} is in use already: choose another with --port\n"
+    assert done.stderr == f"ginnel: 127.0.0.1 port {port} is in use already: choose another with --port\n"
 
 
 @pytest.mark.parametrize("arguments", [("--help",), ("export", "passages")])

@@ -130,7 +130,7 @@ def test_a_clock_that_is_set_later_moves_what_was_stored_to_its_time(
 ) -> None:
     one = bench(clock=FedClock(wall_us=START_US - DAY_S * US_PER_S, is_set=False))
     data = pcm()
-    cut = round(30 * RATE_HZ) * 2  # the first walker has gone
+    cut = round(38 * RATE_HZ) * 2  # the first walker has gone, and might have stopped
     with one.listening():
         one.send(data[:cut])
         one.outbox.deliver()

@@ -180,7 +180,7 @@ from ginnel.daemon.spool import Spool
 from ginnel.store import open_store
 from tests.unit.daemon.given import LANE, delivery, passage
 
-module.MOST_PASSAGES = 2000  # as later, only sooner
+module.MOST_PASSAGES = 20_000  # as later, only sooner
 folder = Path(sys.argv[1])
 url = f"sqlite:///{folder / 'ginnel.db'}"
 open_store(url, create=True).close()
