@@ -37,7 +37,13 @@ class Bar:
 
 BARS = (
     Bar("single walkers, mono", partial(people.singles, snr_db=(22.0, 22.0), n=8), missed=0, false=1),
-    Bar("crossing each other, I/Q", partial(people.opposing, channels=IQ, n=4), missed=1, false=1),
+    Bar(
+        "crossing each other, I/Q",
+        partial(people.opposing, channels=IQ, n=4),
+        missed=1,
+        false=1,
+        mae_percent=5.0,
+    ),
     Bar(
         "single walkers, mono, hard",
         Hardened(partial(people.singles, snr_db=(25.0, 25.0), n=8)),
