@@ -15,7 +15,7 @@ from pathlib import Path
 from ginnel.errors import CaptureTimeError
 from ginnel.times import to_us
 
-_MEND = "give it with --started-at 2026-03-02T08:15:00Z, or put it into the file name"
+_MEND = "put it into the file name, or replay the file with --started-at 2026-03-02T08:15:00Z"
 
 # ISO 8601, basic or extended, with the marks that file names allow instead of the colon.
 _STAMP = re.compile(

@@ -97,8 +97,8 @@ def export(
         else:
             n_rows = _write(store, tables, asked, kind, partitioned=partitioned, output=output)
     if output is not None:
-        what = "pages" if kind in _SUMMARY_FORMATS else "rows"
-        click.echo(f"{output}: {n_rows} {what}", err=True)
+        what = "page" if kind in _SUMMARY_FORMATS else "row"
+        click.echo(f"{output}: {n_rows} {what}{'' if n_rows == 1 else 's'}", err=True)
 
 
 def _check_usage(
