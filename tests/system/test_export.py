@@ -142,7 +142,7 @@ def test_a_workbook_of_several_tables(here: Ginnel, folder: Path) -> None:
 def test_a_data_set_goes_into_a_new_folder_only(here: Ginnel, folder: Path) -> None:
     arguments = ("export", "passages", "--format", "parquet", "--partitioned", "--output", "parts")
     assert here(*arguments).stderr == f"parts: {N_PASSAGES} rows\n"
-    assert [path.relative_to(folder).as_posix() for path in folder.rglob("*.parquet")] == [
+    assert [path.relative_to(folder).as_posix() for path in (folder / "parts").rglob("*.parquet")] == [
         "parts/sensor=lane/month=2026-03/part-0.parquet"
     ]
     again = here(*arguments)
