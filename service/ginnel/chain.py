@@ -19,7 +19,7 @@ from ginnel.passages.stories import Told, tell
 from ginnel.words import US_PER_S, Direction, Flag, Passage, SampleArray, Sensor, Story
 
 #: Named by every passage; changes whenever the same samples could give other passages.
-CHAIN_VERSION = "2"
+CHAIN_VERSION = "3"
 
 #: Heard this near to the span's end or beginning: the span cut it.
 _CUT_S = 0.5

@@ -34,7 +34,7 @@ def draw_plan(plan: Plan, file: Path) -> None:
     try:
         from matplotlib.figure import Figure
     except ModuleNotFoundError as exc:
-        raise ExportError("a plot needs matplotlib: pip install 'ginnel[plot]'") from exc
+        raise ExportError("a plot needs matplotlib: pip install matplotlib") from exc
     figure = Figure(figsize=(7.5, 9.5), layout="constrained")
     speed, level, lines = figure.subplots(3, 1, height_ratios=[3, 3, 1.6])
     _draw_speed(speed, plan)
