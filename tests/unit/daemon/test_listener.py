@@ -86,6 +86,10 @@ class Bench:
             self._n_sent += len(part) // 2
             wait_until(lambda: self.source.n_arrived == self._n_sent and self.source.state.lag_s == 0)
 
+    def heard_until_us(self) -> int | None:
+        span = self.listener._span
+        return None if span is None else span.listened_until_us
+
     def passages(self) -> list[Passage]:
         return [one.passage for one in iter_passages(self.store, with_uncounted=True)]
 
@@ -188,8 +192,10 @@ def test_where_nothing_can_be_kept_nothing_counts_as_heard(
     one = bench()
     with one.listening():
         one.send(pcm()[: round(10 * RATE_HZ) * 2])
+        wait_until(lambda: one.heard_until_us() == START_US + 10 * US_PER_S)
         monkeypatch.setattr(outbox_module, "MOST_PASSAGES", -1)  # full
         one.send(pcm()[: round(10 * RATE_HZ) * 2])
+        wait_until(lambda: one.listener._dropped_samples == 20_000)
         monkeypatch.undo()
         one.send(pcm()[: round(10 * RATE_HZ) * 2])
     first, second = one.spans()

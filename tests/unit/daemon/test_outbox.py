@@ -214,7 +214,7 @@ def test_a_full_disk_is_told_and_once_there_is_room_all_is_well(tmp_path: Path) 
     done = subprocess.run(
         [sys.executable, "-c", FULL, str(tmp_path)],
         cwd=ROOT,
-        env=os.environ | {"PYTHONPATH": str(ROOT)},
+        env=os.environ | {"PYTHONPATH": str(ROOT), "PYTHONDONTWRITEBYTECODE": "1"},
         capture_output=True,
         text=True,
         timeout=120,
